@@ -42,9 +42,15 @@ func ForChunk(workers, n, grain int, body func(worker, chunk, lo, hi int)) {
 	}
 	var next atomic.Int64
 	var wg sync.WaitGroup
+	var failed atomic.Pointer[any]
 	for w := range workers {
 		wg.Go(func() {
-			for {
+			defer func() {
+				if r := recover(); r != nil {
+					failed.CompareAndSwap(nil, &r)
+				}
+			}()
+			for failed.Load() == nil {
 				c := int(next.Add(1)) - 1
 				if c >= chunks {
 					return
@@ -54,6 +60,10 @@ func ForChunk(workers, n, grain int, body func(worker, chunk, lo, hi int)) {
 		})
 	}
 	wg.Wait()
+	// A panic on a worker would end the process before the caller could report it: raise it where the caller is.
+	if r := failed.Load(); r != nil {
+		panic(*r)
+	}
 }
 
 // Sum adds part(lo, hi) over the chunks of [0, n), in chunk order, so that the rounding is the same for any workers.

@@ -38,3 +38,16 @@ func TestForCoversEveryItemOnce(t *testing.T) {
 		}
 	}
 }
+
+func TestPanicReachesTheCaller(t *testing.T) {
+	defer func() {
+		if r := recover(); r != "broken" {
+			t.Errorf("recovered %v, want the worker's panic", r)
+		}
+	}()
+	For(4, 1000, 1, func(lo, _ int) {
+		if lo == 500 {
+			panic("broken")
+		}
+	})
+}
