@@ -1,0 +1,102 @@
+package plaplace
+
+import (
+	"context"
+	"math"
+
+	"pinfill/internal/parallel"
+)
+
+// certificate gives the figures for values, near the polished point x with its enclosure c.
+//
+// Gap: the flux of x, z_e = w^(p-1) |d|^(p-1) sign d, has divergence F_i at free i. For the minimiser u, with
+// b = (values at fixed vertices), Hölder's inequality gives ||w D u||_p >= (z . w D u) / ||z||_q, and
+// z . w D u = ||r(x)||_p^p - sum_i F_i (x_i - u_i) >= ||r||_p^p - sum_i |F_i| because both lie in [0, 1]; and
+// ||z||_q = ||r||_p^(p-1). So (primal - dual) / primal, to the power 1/p, is at most sum |F_i| / ||r||_p^p.
+func (s *Solver) certificate(x point, values []float64, c enclosure, ok bool) Certificate {
+	cert := Certificate{Width: math.NaN()}
+	if ok {
+		cert.Width = 0
+		for _, v := range s.free {
+			// values - (f + lower) and (f + upper) - values, outward.
+			t := values[v] - x.f[v]
+			cert.Width = max(cert.Width, t-c.lower[v], c.upper[v]-t)
+		}
+		cert.Width = cert.Width*(1+8*unit) + 2*unit
+	}
+	cert.Gap, cert.Imbalance = s.balance(x)
+	return cert
+}
+
+// Certify bounds the distance of values, one a vertex, from the minimiser for the values they have at the fixed
+// vertices. It polishes a copy in extended precision, encloses the minimiser, and measures the given values against
+// the enclosure; wrong values widen the result or leave it NaN.
+func (s *Solver) Certify(ctx context.Context, values []float64, tolerance float64) (Certificate, error) {
+	s.counts = Counts{}
+	f := append([]float64(nil), values...)
+	w := s.newWork()
+	x := point{f: f, h: make([]float64, s.n)}
+	for range 30 {
+		step, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 0, 1e-6, 1, true)
+		if err != nil {
+			return Certificate{}, err
+		}
+		if step < 1e-15 {
+			break
+		}
+	}
+	c, ok, err := s.enclose(ctx, x, w, 1)
+	if err != nil {
+		return Certificate{}, err
+	}
+	return s.certificate(x, values, c, ok), nil
+}
+
+// balance gives Certificate.Gap and Certificate.Imbalance of a point. Fluxes are taken over those of the steepest
+// edge, so that the powers neither overflow nor, where they matter, vanish.
+func (s *Solver) balance(x point) (gap, imbalance float64) {
+	slope := func(a, d float64) float64 { return a + math.Log(math.Abs(d)) }
+	top := parallel.Max(s.workers, len(s.ea), edgeChunk, func(lo, hi int) float64 {
+		m := math.Inf(-1)
+		for e := lo; e < hi; e++ {
+			m = max(m, slope(s.ea[e], x.diff(s.eu[e], s.ev[e])))
+		}
+		return m
+	})
+	energy := parallel.Sum(s.workers, len(s.ea), edgeChunk, func(lo, hi int) float64 {
+		var t float64
+		for e := lo; e < hi; e++ {
+			t += math.Exp(s.p * (slope(s.ea[e], x.diff(s.eu[e], s.ev[e])) - top))
+		}
+		return t
+	})
+	g := s.graph
+	worst := make([]float64, (s.n+rowChunk-1)/rowChunk)
+	flow := make([]float64, len(worst))
+	parallel.ForChunk(s.workers, s.n, rowChunk, func(_, chunk, lo, hi int) {
+		for v := lo; v < hi; v++ {
+			if s.isFixed[v] {
+				continue
+			}
+			r := s.rowAt(x, v)
+			if r.step > imbalanceFloor && r.sum > 0 {
+				worst[chunk] = max(worst[chunk], math.Abs(r.net)/r.sum)
+			}
+			var net float64
+			for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
+				d := x.diff(int32(v), g.Col[k])
+				net += math.Copysign(math.Exp(g.Val[k]+(s.p-1)*(slope(g.Val[k], d)-top)), d)
+			}
+			flow[chunk] += math.Abs(net)
+		}
+	})
+	var total float64
+	for k := range flow {
+		total += flow[k]
+		imbalance = max(imbalance, worst[k])
+	}
+	return total / (math.Exp(top) * energy), imbalance
+}
+
+// imbalanceFloor is the step, as a share of the range, below which a vertex is flat and its imbalance is noise.
+const imbalanceFloor = 1e-9

@@ -1,0 +1,221 @@
+package solve
+
+import (
+	"context"
+	"errors"
+	"math"
+
+	"pinfill/internal/plaplace"
+)
+
+// plan is a problem made ready for any values: its regions and, once used, their engines.
+type plan struct {
+	problem  Problem
+	settings Settings
+	regions  []region
+	engines  []*plaplace.Solver // one a region, made when first used; finite p
+	progress func(share float64)
+}
+
+func newPlan(ctx context.Context, p Problem, s Settings) (*plan, error) {
+	if err := checkGraph(p); err != nil {
+		return nil, err
+	}
+	rs, err := regions(p)
+	if err != nil {
+		return nil, err
+	}
+	return &plan{problem: p, settings: s, regions: rs, engines: make([]*plaplace.Solver, len(rs))}, ctx.Err()
+}
+
+// scale maps given values to shares of their range and back, by differences, so that an offset far larger than the
+// range costs no digits and a factor 2^k changes no bit.
+type scale struct{ least, size float64 }
+
+func scaleOf(values []float64) scale {
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, y := range values {
+		lo, hi = min(lo, y), max(hi, y)
+	}
+	if len(values) == 0 {
+		return scale{}
+	}
+	return scale{lo, hi - lo}
+}
+
+func (c scale) share(y float64) float64 { return (y - c.least) / c.size }
+
+// value is the inverse of share, kept within the range.
+func (c scale) value(t float64) float64 {
+	return min(max(c.least+float64(t*c.size), c.least), c.least+c.size)
+}
+
+var errInfinite = errors.New("p = inf is not connected yet")
+
+// run solves for one set of values.
+func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error) {
+	n := pl.problem.Graph.N
+	res := Result{Values: make([]float64, n), Status: Trivial}
+	for k, v := range pl.problem.Fixed {
+		res.Values[v] = values[k]
+	}
+	whole := scaleOf(values)
+	done, total := 0, n-len(pl.problem.Fixed)
+	for c := range pl.regions {
+		if err := ctx.Err(); err != nil {
+			return Result{Status: Stopped}, err
+		}
+		r := &pl.regions[c]
+		y := make([]float64, len(r.given))
+		for k, g := range r.given {
+			y[k] = values[g]
+		}
+		own := scaleOf(y)
+		if own.size == 0 {
+			for _, v := range r.vertices {
+				res.Values[v] = own.least
+			}
+		} else if err := pl.runRegion(ctx, c, y, own, whole, start, &res); err != nil {
+			return Result{Status: Stopped}, err
+		}
+		done += r.free
+		if pl.progress != nil && r.free > 1000 {
+			pl.progress(float64(done) / float64(total))
+		}
+	}
+	for k, v := range pl.problem.Fixed {
+		res.Values[v] = values[k]
+	}
+	if math.IsInf(pl.problem.P, 1) {
+		res.Certificate.Gap, res.Certificate.Imbalance = math.NaN(), math.NaN()
+	} else {
+		res.Certificate.SlopeImbalance = math.NaN()
+	}
+	if res.Status != Trivial {
+		res.Status = res.Certificate.status(pl.settings.tolerance())
+	}
+	return res, nil
+}
+
+// status compares the figures with their tolerances. A figure that does not apply passes, except that finite p needs a
+// width.
+func (c Certificate) status(tolerance float64) Status {
+	within := func(x, t float64) bool { return math.IsNaN(x) || x <= t }
+	switch {
+	case math.IsNaN(c.SlopeImbalance) && !(c.Width <= tolerance):
+		return Missed
+	case within(c.Width, tolerance) && within(c.Gap, max(tolerance, gapTolerance)) && within(c.SlopeImbalance, slopeTolerance):
+		return Certified
+	}
+	return Missed
+}
+
+const (
+	gapTolerance   = 1e-9
+	slopeTolerance = 1e-9
+)
+
+// engine gives the solver of a region, made when first asked for.
+func (pl *plan) engine(ctx context.Context, c int) (*plaplace.Solver, error) {
+	if pl.engines[c] == nil {
+		r := &pl.regions[c]
+		s, err := plaplace.New(ctx, r.graph, r.fixed, pl.problem.P, plaplace.Options{Workers: pl.settings.Workers})
+		if err != nil {
+			return nil, err
+		}
+		pl.engines[c] = s
+	}
+	return pl.engines[c], nil
+}
+
+// runRegion solves region c for the values y at its fixed vertices and adds what it finds to res.
+func (pl *plan) runRegion(ctx context.Context, c int, y []float64, own, whole scale, start []float64, res *Result) error {
+	if math.IsInf(pl.problem.P, 1) {
+		return errInfinite
+	}
+	r := &pl.regions[c]
+	shares := make([]float64, len(y))
+	for k := range y {
+		shares[k] = own.share(y[k])
+	}
+	var guess []float64
+	if start != nil {
+		guess = make([]float64, len(r.vertices))
+		for k, v := range r.vertices {
+			guess[k] = own.share(start[v])
+		}
+	}
+	s, err := pl.engine(ctx, c)
+	if err != nil {
+		return err
+	}
+	ratio := own.size / whole.size
+	got, err := s.Solve(ctx, shares, guess, pl.settings.tolerance()/ratio)
+	if err != nil {
+		return err
+	}
+	for k, v := range r.vertices {
+		res.Values[v] = own.value(got.Values[k])
+	}
+	res.Status = Certified
+	res.Certificate.add(got.Certificate, ratio)
+	res.Counts.LinearSolves += got.Counts.LinearSolves
+	res.Counts.Iterations += got.Counts.Iterations
+	res.Counts.Newton += got.Counts.Newton
+	return nil
+}
+
+// add joins the certificate of a region whose range is ratio of the whole. NaN stays NaN.
+func (c *Certificate) add(r plaplace.Certificate, ratio float64) {
+	c.Gap = math.Max(c.Gap, r.Gap)
+	c.Imbalance = math.Max(c.Imbalance, r.Imbalance)
+	c.Width = math.Max(c.Width, r.Width*ratio)
+}
+
+// verify certifies a vector for one set of values.
+func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, error) {
+	var cert Certificate
+	whole := scaleOf(values)
+	for k, v := range pl.problem.Fixed {
+		if d := math.Abs(f[v] - values[k]); d > 0 {
+			cert.Width = math.Max(cert.Width, d/whole.size)
+		}
+	}
+	if math.IsInf(pl.problem.P, 1) {
+		return cert, errInfinite
+	}
+	cert.SlopeImbalance = math.NaN()
+	for c := range pl.regions {
+		r := &pl.regions[c]
+		y := make([]float64, len(r.given))
+		for k, g := range r.given {
+			y[k] = values[g]
+		}
+		own := scaleOf(y)
+		if own.size == 0 {
+			for _, v := range r.vertices {
+				if d := math.Abs(f[v] - own.least); !(d <= 0) {
+					cert.Width = math.Max(cert.Width, d/whole.size)
+				}
+			}
+			continue
+		}
+		shares := make([]float64, len(r.vertices))
+		for k, v := range r.vertices {
+			shares[k] = own.share(f[v])
+		}
+		for k, v := range r.fixed {
+			shares[v] = own.share(y[k])
+		}
+		s, err := pl.engine(ctx, c)
+		if err != nil {
+			return cert, err
+		}
+		got, err := s.Certify(ctx, shares, pl.settings.tolerance()*whole.size/own.size)
+		if err != nil {
+			return cert, err
+		}
+		cert.add(got, own.size/whole.size)
+	}
+	return cert, nil
+}
