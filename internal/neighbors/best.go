@@ -21,11 +21,11 @@ func (b *best) reset(close []float64, index []int32, inf float64) {
 	b.close, b.index, b.n, b.worst = close, index, 0, inf
 }
 
-// offer puts point i at closeness c <= b.worst where it belongs.
-func (b *best) offer(c float64, i int32) {
+// offer puts point i at closeness c <= b.worst where it belongs, and gives the new b.worst.
+func (b *best) offer(c float64, i int32) float64 {
 	if b.n == len(b.close) {
 		if c == b.worst && !b.before(i, b.index[b.n-1]) {
-			return
+			return b.worst
 		}
 	} else {
 		b.n++
@@ -39,6 +39,7 @@ func (b *best) offer(c float64, i int32) {
 	if b.n == len(b.close) {
 		b.worst = b.close[b.n-1]
 	}
+	return b.worst
 }
 
 // before settles ties: lexicographically by coordinates, identical points by number.

@@ -38,7 +38,7 @@ func (x *Index) Nearest(query []float64, index []int32, dist []float64) error {
 		return fmt.Errorf("%d nearest wanted, with %d distances, of %d points", len(index), len(dist), x.t.pts.N)
 	}
 	f := x.finders.Get().(*finder)
-	f.nearest(query, -1, dist, index)
+	f.nearest(query, dist, index)
 	x.finders.Put(f)
 	x.t.rename(index)
 	distances(x.t.metric, dist)

@@ -88,19 +88,22 @@ func (t *tree) ordered() bool {
 // the closeness of a point inside: each term is at most the point's, and sums of such terms in one order keep that.
 func (t *tree) gap(q []float64, v int) float64 {
 	d := len(q)
-	b := t.box[v*2*d : (v+1)*2*d]
-	low, high := b[:d], b[d:2*d]
+	b := t.box[v*2*d : (v+1)*2*d : (v+1)*2*d]
+	if t.metric != points.Manhattan {
+		switch d {
+		case 2:
+			g, h := max(b[0]-q[0], q[0]-b[2], 0), max(b[1]-q[1], q[1]-b[3], 0)
+			return float64(g*g) + float64(h*h)
+		case 3:
+			g, h, k := max(b[0]-q[0], q[0]-b[3], 0), max(b[1]-q[1], q[1]-b[4], 0), max(b[2]-q[2], q[2]-b[5], 0)
+			return float64(g*g) + float64(h*h) + float64(k*k)
+		}
+	}
+	low, high := b[:d], b[d:]
 	var s [4]float64
 	body := d &^ 3
 	for j, x := range q {
-		var g float64
-		if x < low[j] {
-			g = low[j] - x
-		} else if x > high[j] {
-			g = x - high[j]
-		} else {
-			continue
-		}
+		g := max(low[j]-x, x-high[j], 0)
 		if t.metric != points.Manhattan {
 			g = float64(g * g)
 		}
@@ -122,8 +125,9 @@ type finder struct {
 	stack     []pending
 }
 
+// pending is a node still to be visited and how near its box is.
 type pending struct {
-	node int32
+	node int
 	gap  float64
 }
 
@@ -131,47 +135,93 @@ func (t *tree) finder() *finder {
 	return &finder{t: t, best: best{pts: t.pts, id: t.id}, near: closeness(t.metric), stack: make([]pending, 0, 2*t.levels+2)}
 }
 
-// nearest fills close and index with the places of the points nearest to q, but for the point at place self (-1 for
-// none). There must be len(close) such points.
-func (f *finder) nearest(q []float64, self int, close []float64, index []int32) {
+// nearest fills close and index with the places of the points nearest to q. There must be len(close) of them.
+func (f *finder) nearest(q []float64, close []float64, index []int32) {
 	f.best.reset(close, index, math.Inf(1))
-	f.stack = append(f.stack[:0], pending{1, 0})
-	leaves := 1 << f.t.levels
-	for len(f.stack) > 0 {
-		top := f.stack[len(f.stack)-1]
-		f.stack = f.stack[:len(f.stack)-1]
-		if top.gap > f.best.worst {
-			continue
-		}
-		v := int(top.node)
-		for v < leaves {
-			l, r := pending{int32(2 * v), f.t.gap(q, 2*v)}, pending{int32(2*v + 1), f.t.gap(q, 2*v+1)}
-			if r.gap < l.gap {
-				l, r = r, l
-			}
-			if r.gap <= f.best.worst {
-				f.stack = append(f.stack, r)
-			}
-			v, top.gap = int(l.node), l.gap
-			if l.gap > f.best.worst {
-				break
-			}
-		}
-		if v >= leaves && top.gap <= f.best.worst {
-			f.scan(q, self, v-leaves)
+	f.descend(q, 1, 0)
+}
+
+// others fills close and index with the places of the points nearest to the point at place i of a leaf, without that
+// point. It climbs from the leaf to the root, looking into what each step adds; most of the neighbours are found first.
+func (f *finder) others(i, leaf int, close []float64, index []int32) {
+	f.best.reset(close, index, math.Inf(1))
+	q := f.t.pts.Row(i)
+	lo, hi := f.t.leaf(leaf)
+	f.scan(q, lo, i)
+	f.scan(q, i+1, hi)
+	for v := 1<<f.t.levels + leaf; v > 1; v >>= 1 {
+		if g := f.t.gap(q, v^1); g <= f.best.worst {
+			f.descend(q, v^1, g)
 		}
 	}
 }
 
-// scan offers the points of a leaf.
-func (f *finder) scan(q []float64, self, leaf int) {
-	lo, hi := points.Bound(f.t.pts.N, f.t.levels, leaf), points.Bound(f.t.pts.N, f.t.levels, leaf+1)
-	for i := lo; i < hi; i++ {
-		if c := f.near(q, f.t.pts.Row(i)); c <= f.best.worst && i != self {
-			f.best.offer(c, int32(i))
+// descend visits node v, whose box is at closeness gap to q, and what is below it, nearer nodes first.
+func (f *finder) descend(q []float64, v int, gap float64) {
+	leaves := 1 << f.t.levels
+	stack := f.stack[:0]
+	for {
+		for v < leaves && gap <= f.best.worst {
+			near, far := f.t.gap(q, 2*v), f.t.gap(q, 2*v+1)
+			v *= 2
+			w := v + 1
+			if far < near {
+				near, far, v, w = far, near, w, v
+			}
+			if far <= f.best.worst {
+				stack = append(stack, pending{w, far})
+			}
+			gap = near
+		}
+		if gap <= f.best.worst {
+			lo, hi := f.t.leaf(v - leaves)
+			f.scan(q, lo, hi)
+		}
+		if len(stack) == 0 {
+			return
+		}
+		v, gap = stack[len(stack)-1].node, stack[len(stack)-1].gap
+		stack = stack[:len(stack)-1]
+	}
+}
+
+// leaf is the range of places of a leaf.
+func (t *tree) leaf(i int) (lo, hi int) {
+	return points.Bound(t.pts.N, t.levels, i), points.Bound(t.pts.N, t.levels, i+1)
+}
+
+// scan offers the points at places [lo, hi). The sums for two and three columns are those of squared.
+func (f *finder) scan(q []float64, lo, hi int) {
+	f.distances += int64(hi - lo)
+	d, worst := len(q), f.best.worst
+	rows := f.t.pts.Data[lo*d : hi*d]
+	switch {
+	case d == 2 && f.t.metric != points.Manhattan:
+		x, y := q[0], q[1]
+		for i := lo; len(rows) >= 2; i++ {
+			a, b := rows[0]-x, rows[1]-y
+			rows = rows[2:]
+			if c := float64(a*a) + float64(b*b); c <= worst {
+				worst = f.best.offer(c, int32(i))
+			}
+		}
+	case d == 3 && f.t.metric != points.Manhattan:
+		x, y, z := q[0], q[1], q[2]
+		for i := lo; len(rows) >= 3; i++ {
+			a, b, e := rows[0]-x, rows[1]-y, rows[2]-z
+			rows = rows[3:]
+			if c := float64(a*a) + float64(b*b) + float64(e*e); c <= worst {
+				worst = f.best.offer(c, int32(i))
+			}
+		}
+	default:
+		for i := lo; i < hi; i++ {
+			if c := f.near(q, rows[:d]); c <= worst {
+				worst = f.best.offer(c, int32(i))
+			}
+			rows = rows[d:]
 		}
 	}
-	f.distances += int64(hi - lo)
 }
 
 // all finds the k nearest of every point of the tree.
@@ -179,8 +229,8 @@ func (t *tree) all(ctx context.Context, k int, o Options) (*Lists, Report, error
 	n := t.pts.N
 	out := &Lists{N: n, K: k, Index: make([]int32, n*k), Dist: make([]float64, n*k)}
 	finders := make([]*finder, o.Workers)
-	step := newSteps(n, o.Progress)
-	parallel.ForChunk(o.Workers, n, 1024, func(w, _, lo, hi int) {
+	step := newSteps(1<<t.levels, o.Progress)
+	parallel.ForChunk(o.Workers, 1<<t.levels, 64, func(w, _, from, to int) {
 		if ctx.Err() != nil {
 			return
 		}
@@ -188,13 +238,16 @@ func (t *tree) all(ctx context.Context, k int, o Options) (*Lists, Report, error
 			finders[w] = t.finder()
 		}
 		f := finders[w]
-		for i := lo; i < hi; i++ {
-			row := t.number(i)
-			index := out.Index[row*k : (row+1)*k]
-			f.nearest(t.pts.Row(i), i, out.Dist[row*k:(row+1)*k], index)
-			t.rename(index)
+		for leaf := from; leaf < to; leaf++ {
+			lo, hi := t.leaf(leaf)
+			for i := lo; i < hi; i++ {
+				row := t.number(i)
+				index := out.Index[row*k : (row+1)*k]
+				f.others(i, leaf, out.Dist[row*k:(row+1)*k], index)
+				t.rename(index)
+			}
 		}
-		step.add(hi - lo)
+		step.add(to - from)
 	})
 	if err := ctx.Err(); err != nil {
 		return nil, Report{}, err
