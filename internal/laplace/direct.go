@@ -5,16 +5,6 @@ import (
 	"math"
 )
 
-// directAlways is the number of free vertices up to which a system is factorised at once.
-const directAlways = 300
-
-// engines are what a system has built so far.
-type engines struct {
-	dense *denseFactor
-}
-
-func (e *engines) reweighted() { e.dense = nil }
-
 // denseFactor is L D L^T of the grounded Laplacian by elimination without subtraction: with w_ij >= 0 and e_i >= 0,
 // d_k = e_k + sum_{j>k} w_kj, w_ij += w_ik w_kj / d_k, e_i += w_ik e_k / d_k. Every quantity is a sum of positive
 // terms, so each entry is found to a few roundings whatever the contrast (Alfa, Xue and Ye, Math. Comp. 71, 2002).
@@ -24,7 +14,7 @@ type denseFactor struct {
 	d []float64
 }
 
-func newDense(a *grounded) *denseFactor {
+func newDense(a *sddm) *denseFactor {
 	n := a.n
 	f := &denseFactor{n: n, l: make([]float64, n*n), d: make([]float64, n)}
 	e := append([]float64(nil), a.excess...)
@@ -77,29 +67,60 @@ func (f *denseFactor) solve(b, x []float64) {
 	}
 }
 
-func (s *System) solveDirect(ctx context.Context, b, x []float64, j job, tol float64) (Stats, error) {
-	if s.dense == nil {
-		s.dense = newDense(&s.a)
+// solveDirect solves the first used columns of k by elimination, with up to three steps of refinement.
+func (s *System) solveDirect(ctx context.Context, k *block, used int, tol float64) (Stats, error) {
+	if s.factor == nil {
+		s.factor = newDense(k.a)
 	}
-	workers := s.options.Workers
-	n := s.a.n
-	st := Stats{Method: Direct}
-	r, z := make([]float64, n), make([]float64, n)
-	bb := s.a.norm2(workers, b)
-	s.dense.solve(b, x)
+	n, w := k.a.n, k.width
+	total := Stats{Method: Direct, Converged: true}
+	bb := k.norm2(k.b)
+	column := make([]float64, n)
+	answer := make([]float64, n)
+	solve := func(c int, b, x []float64) {
+		for i := range column {
+			column[i] = b[i*w+c]
+		}
+		s.factor.solve(column, answer)
+		for i, v := range answer {
+			x[i*w+c] = v
+		}
+	}
+	for c := range used {
+		solve(c, k.b, k.x)
+	}
+	var columns [maxWidth]Stats
 	for step := 0; ; step++ {
-		rr := s.a.residual(workers, b, x, r)
-		s.dense.solve(r, z)
-		residual, correction := math.Sqrt(rr/bb), maxAbs(workers, z)/j.scale(workers, x)
-		if step == 0 || correction < st.Correction {
-			st.Residual, st.Correction = residual, correction
+		if err := ctx.Err(); err != nil {
+			return total, err
 		}
-		st.Converged = st.Residual <= tol && st.Correction <= tol
-		if st.Converged || step == 3 {
-			return st, ctx.Err()
+		rr, _ := k.residual()
+		going := false
+		for c := range used {
+			st := Stats{Method: Direct, Converged: true}
+			if bb[c] > 0 {
+				solve(c, k.r, k.z)
+				largest := 0.0
+				for i := range n {
+					largest = max(largest, math.Abs(k.z[i*w+c]))
+				}
+				st.Residual, st.Correction = math.Sqrt(rr[c]/bb[c]), largest/k.scale(c)
+				st.Converged = st.Residual <= tol && st.Correction <= tol
+			}
+			columns[c] = st
+			if !st.Converged && step < 3 {
+				going = true
+				for i := range n {
+					k.x[i*w+c] += k.z[i*w+c]
+				}
+			}
 		}
-		for i := range x {
-			x[i] += z[i]
+		if !going {
+			break
 		}
 	}
+	for c := range used {
+		total.merge(columns[c])
+	}
+	return total, nil
 }

@@ -2,6 +2,7 @@ package laplace
 
 import (
 	"math"
+	"slices"
 
 	"pinfill/internal/parallel"
 )
@@ -11,15 +12,21 @@ const (
 	sumChunk = 8192 // rows of one partial sum; a reduction adds partial sums in order
 )
 
-// grounded is L_UU for the free vertices, numbered 0..n-1 in the order of the network: conductances between free
-// vertices as rows of (col, w), excess e_i to the fixed ones, diag_i = e_i + sum_j w_ij.
-type grounded struct {
+// sddm is a symmetric diagonally dominant M-matrix: row i has the off-diagonal entries -w at columns col, in
+// ptr[i]:ptr[i+1], and the diagonal diag_i = excess_i + sum of its w, with w >= 0 and excess >= 0.
+type sddm struct {
 	n      int
 	ptr    []int
 	col    []int32
 	w      []float64
 	excess []float64
 	diag   []float64
+}
+
+// grounded is L_UU for the free vertices, numbered 0..n-1 in the order of the network; excess_i is the sum of the
+// conductances to fixed vertices.
+type grounded struct {
+	sddm
 
 	// Edges to fixed vertices: free row edgeRow[k] carries edges edgePtr[k]..edgePtr[k+1].
 	edgeRow []int32
@@ -146,33 +153,31 @@ func (s *System) layout() {
 	a.edgeFix, a.edgeW = make([]int32, edges), make([]float64, edges)
 }
 
-// ungrounded gives a free row from which no positive conductances lead to a fixed vertex, the smallest, or -1.
+// ungrounded gives a free row from which no positive conductances lead to a fixed vertex, the smallest, or -1. On the
+// way it counts the depth of the network.
 func (s *System) ungrounded() int {
 	a := &s.a
 	seen := make([]bool, a.n)
-	var stack []int32
+	var front, next []int32
 	for i := range a.n {
 		if a.excess[i] > 0 {
 			seen[i] = true
-			stack = append(stack, int32(i))
+			front = append(front, int32(i))
 		}
 	}
-	for len(stack) > 0 {
-		i := stack[len(stack)-1]
-		stack = stack[:len(stack)-1]
-		for k := a.ptr[i]; k < a.ptr[i+1]; k++ {
-			if j := a.col[k]; !seen[j] && a.w[k] > 0 {
-				seen[j] = true
-				stack = append(stack, j)
+	for s.depth = 0; len(front) > 0; s.depth++ {
+		next = next[:0]
+		for _, i := range front {
+			for k := a.ptr[i]; k < a.ptr[i+1]; k++ {
+				if j := a.col[k]; !seen[j] && a.w[k] > 0 {
+					seen[j] = true
+					next = append(next, j)
+				}
 			}
 		}
+		front, next = next, front
 	}
-	for i, ok := range seen {
-		if !ok {
-			return i
-		}
-	}
-	return -1
+	return slices.Index(seen, false)
 }
 
 // inject sets b_i = sum over fixed neighbours of e_ij t_j, the right-hand side for values t at the fixed vertices.
@@ -185,52 +190,4 @@ func (a *grounded) inject(t, b []float64) {
 		}
 		b[i] = v
 	}
-}
-
-// residual sets r = b - A x and gives sum r_i^2 / A_ii.
-func (a *grounded) residual(workers int, b, x, r []float64) float64 {
-	return parallel.Sum(workers, a.n, sumChunk, func(lo, hi int) float64 {
-		var s float64
-		for i := lo; i < hi; i++ {
-			xi := x[i]
-			t := float64(a.excess[i] * xi)
-			cols, w := a.col[a.ptr[i]:a.ptr[i+1]], a.w[a.ptr[i]:a.ptr[i+1]]
-			for k, j := range cols {
-				t += float64(w[k] * (xi - x[j]))
-			}
-			t = b[i] - t
-			r[i] = t
-			s += float64(t / a.diag[i] * t)
-		}
-		return s
-	})
-}
-
-// multiply sets q = A p and gives p . q.
-func (a *grounded) multiply(workers int, p, q []float64) float64 {
-	return parallel.Sum(workers, a.n, sumChunk, func(lo, hi int) float64 {
-		var s float64
-		for i := lo; i < hi; i++ {
-			pi := p[i]
-			t := float64(a.excess[i] * pi)
-			cols, w := a.col[a.ptr[i]:a.ptr[i+1]], a.w[a.ptr[i]:a.ptr[i+1]]
-			for k, j := range cols {
-				t += float64(w[k] * (pi - p[j]))
-			}
-			q[i] = t
-			s += float64(t * pi)
-		}
-		return s
-	})
-}
-
-// norm2 is sum b_i^2 / A_ii.
-func (a *grounded) norm2(workers int, b []float64) float64 {
-	return parallel.Sum(workers, a.n, sumChunk, func(lo, hi int) float64 {
-		var s float64
-		for i := lo; i < hi; i++ {
-			s += float64(b[i] / a.diag[i] * b[i])
-		}
-		return s
-	})
 }

@@ -3,183 +3,162 @@ package laplace
 import (
 	"context"
 	"math"
-
-	"pinfill/internal/parallel"
 )
 
-// preconditioner applies an approximate inverse of A.
+// preconditioner applies an approximate inverse of A to the residuals of a block.
 type preconditioner interface {
-	// apply sets z to about A^-1 r.
-	apply(r, z []float64)
+	// apply sets z to about A^-1 r; size is max |r_i| / A_ii of each column.
+	apply(k *block, size *scalars) applied
 	method() Method
-	// slack bounds how far max |error| may exceed max |z|, from the iteration so far.
+	// slack bounds how far max |error| is expected to exceed max |z|, given the iteration so far.
 	slack(l *lanczos) float64
+	// patience is the number of iterations to wait for the residual to halve before giving a column up.
+	patience() int
 }
 
-// pcg is flexible conjugate gradients: beta = -(z . q_old) / (p_old . q_old) keeps successive directions conjugate
-// though the preconditioner changes from step to step (Notay, SIAM J. Sci. Comput. 22, 2000). It stops on the true
-// residual and on the preconditioned residual, or when neither falls any more.
-func (s *System) pcg(ctx context.Context, b, x []float64, j job, tol float64, m preconditioner) (Stats, error) {
-	a, workers := &s.a, s.options.Workers
-	n := a.n
-	r, z, p, q := make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n)
-	st := Stats{Method: m.method()}
-	bb := a.norm2(workers, b)
-	var best float64 = math.Inf(1)
-	for restart := 0; ; restart++ {
-		rr := a.residual(workers, b, x, r)
-		st.Residual = math.Sqrt(rr / bb)
-		var l lanczos
-		if st.Residual <= tol {
-			m.apply(r, z)
-			st.Correction = maxAbs(workers, z) * m.slack(&l) / j.scale(workers, x)
-			st.Converged = st.Correction <= tol
+const restarts = 6 // from the true residual, at most
+
+// column is the state of one right-hand side.
+type column struct {
+	active   bool
+	stats    Stats
+	bb       float64 // norm^2 of b
+	first    float64 // residual^2 at the start of the round
+	claimed  float64 // residual^2 by the recurrence
+	lowest   float64 // residual^2 at the last marked progress
+	lowestAt int     // iteration of it
+	pq       float64 // p . A p
+	largest  float64 // max |z| of the last apply
+	slack    float64 // largest of the rounds before
+	spectrum lanczos // of this round
+}
+
+// verdict says whether to give up on a preconditioner, after an iteration that left residual^2 rr in column c.
+type verdict func(iteration int, c *column, rr, tol float64) (stop bool)
+
+// pcg is flexible conjugate gradients on the columns of a block from the guess x: beta = -(z . q_old) / (p_old .
+// q_old) keeps successive directions conjugate though the preconditioner may change from step to step (Notay, SIAM J.
+// Sci. Comput. 22, 2000). A column stops when its residual and its preconditioned residual are small, or neither
+// falls any more; then the residual is computed anew and, if it is not what the recurrence claims, the iteration
+// starts again from it. quit may end the iteration early, with what has been reached left in x.
+func pcg(ctx context.Context, k *block, tol float64, m preconditioner, quit verdict) (columns [maxWidth]column, done bool, err error) {
+	bb := k.norm2(k.b)
+	for c := range k.width {
+		columns[c] = column{active: bb[c] > 0, bb: bb[c], first: math.Inf(1), stats: Stats{Method: m.method(), Converged: bb[c] <= 0}}
+	}
+	for round := 0; ; round++ {
+		rr, size := k.residual()
+		if !k.judge(columns[:k.width], round, &rr, &size, tol, m) {
+			return columns, true, nil
 		}
-		if st.Converged || restart > 0 && st.Residual > best/2 || restart >= 8 {
-			if !st.Converged {
-				m.apply(r, z)
-				st.Correction = maxAbs(workers, z) / j.scale(workers, x)
-			}
-			return st, nil
-		}
-		best = min(best, st.Residual)
-		lowest, lowestAt := rr, 0
-		var pq float64
 		for it := 1; ; it++ {
 			if err := ctx.Err(); err != nil {
-				return st, err
+				return columns, false, err
 			}
-			m.apply(r, z)
-			if rr <= tol*tol*bb && maxAbs(workers, z)*m.slack(&l) <= tol*j.scale(workers, x) {
-				break
-			}
-			zr, zq := dots(workers, z, r, q)
-			beta := 0.0
-			if it > 1 {
-				beta = -zq / pq
-			}
-			parallel.For(workers, n, sumChunk, func(lo, hi int) {
-				for i := lo; i < hi; i++ {
-					p[i] = z[i] + float64(beta*p[i])
+			z := m.apply(k, &size)
+			var beta, alpha scalars
+			going := false
+			for c := range k.width {
+				col := &columns[c]
+				if !col.active {
+					continue
 				}
-			})
-			pq = a.multiply(workers, p, q)
-			alpha := zr / pq
-			if !(pq > 0) || math.IsInf(alpha, 0) || math.IsNaN(alpha) {
-				break
-			}
-			l.step(alpha, beta)
-			rr = parallel.Sum(workers, n, sumChunk, func(lo, hi int) float64 {
-				var t float64
-				for i := lo; i < hi; i++ {
-					x[i] += float64(alpha * p[i])
-					r[i] -= float64(alpha * q[i])
-					t += float64(r[i] / a.diag[i] * r[i])
+				col.largest = z.largest[c]
+				if k.small(c, col, rr[c], tol, m) || isBad(z.zr[c]) {
+					col.active = false
+					continue
 				}
-				return t
-			})
-			st.Iterations++
-			if rr < lowest/4 {
-				lowest, lowestAt = rr, it
-			} else if it-lowestAt > 300 {
+				going = true
+				if it > 1 {
+					beta[c] = -z.zq[c] / col.pq
+				}
+			}
+			if !going {
 				break
 			}
-			if rr == 0 {
-				break
+			k.direct(&beta)
+			pq := k.multiply()
+			for c := range k.width {
+				col := &columns[c]
+				if !col.active {
+					continue
+				}
+				alpha[c] = z.zr[c] / pq[c]
+				if !(pq[c] > 0) || isBad(alpha[c]) {
+					alpha[c], col.active = 0, false
+					continue
+				}
+				col.pq = pq[c]
+				col.spectrum.step(alpha[c], beta[c])
+				col.stats.Iterations++
+			}
+			rr, size = k.advance(&alpha)
+			for c := range k.width {
+				col := &columns[c]
+				if !col.active {
+					continue
+				}
+				col.claimed = rr[c]
+				if rr[c] < col.lowest/4 {
+					col.lowest, col.lowestAt = rr[c], it
+				}
+				if it-col.lowestAt > m.patience() || rr[c] == 0 || k.small(c, col, rr[c], tol, m) {
+					col.active = false
+				} else if quit != nil && quit(it, col, rr[c], tol) {
+					return columns, false, nil
+				}
 			}
 		}
 	}
 }
 
-func dots(workers int, z, r, q []float64) (zr, zq float64) {
-	n := len(z)
-	parts := make([][2]float64, (n+sumChunk-1)/sumChunk)
-	parallel.ForChunk(workers, n, sumChunk, func(_, c, lo, hi int) {
-		var s, t float64
-		for i := lo; i < hi; i++ {
-			s += float64(z[i] * r[i])
-			t += float64(z[i] * q[i])
+// judge looks at the true residuals (rr, size) at the start of a round: which columns are done, which go on. It says
+// whether any goes on.
+func (k *block) judge(columns []column, round int, rr, size *scalars, tol float64, m preconditioner) bool {
+	doubt := false // a column whose recurrence does not match the truth
+	for c := range columns {
+		col := &columns[c]
+		if col.bb <= 0 {
+			continue
 		}
-		parts[c] = [2]float64{s, t}
-	})
-	for _, v := range parts {
-		zr += v[0]
-		zq += v[1]
-	}
-	return zr, zq
-}
-
-// scale is the size of x against which corrections are judged.
-func (j *job) scale(workers int, x []float64) float64 {
-	if j.unit > 0 {
-		return j.unit
-	}
-	return max(maxAbs(workers, x), math.SmallestNonzeroFloat64)
-}
-
-// jacobi is the diagonal preconditioner.
-type jacobi struct {
-	a       *grounded
-	workers int
-}
-
-func (m *jacobi) method() Method { return Jacobi }
-
-func (m *jacobi) apply(r, z []float64) {
-	parallel.For(m.workers, len(r), sumChunk, func(lo, hi int) {
-		for i := lo; i < hi; i++ {
-			z[i] = r[i] / m.a.diag[i]
+		col.stats.Residual = math.Sqrt(rr[c] / col.bb)
+		if rr[c] == 0 {
+			col.stats.Correction, col.stats.Converged = 0, true
+			continue
 		}
-	})
-}
-
-// slack is 1 over the smallest eigenvalue of D^-1 A that the iteration has seen.
-func (m *jacobi) slack(l *lanczos) float64 { return 1 / l.smallest() }
-
-// lanczos keeps the tridiagonal matrix of Lanczos that conjugate gradients build on the way: T_kk = 1/alpha_k +
-// beta_k/alpha_{k-1}, T_k,k+1 = sqrt(beta_{k+1})/alpha_k (Saad, Iterative Methods for Sparse Linear Systems, 2nd
-// ed., 6.7.3).
-type lanczos struct{ inverse, beta []float64 } // 1/alpha_k and beta_k
-
-func (l *lanczos) step(alpha, beta float64) {
-	l.inverse = append(l.inverse, 1/alpha)
-	l.beta = append(l.beta, max(beta, 0))
-}
-
-// smallest is the smallest eigenvalue of the tridiagonal matrix by bisection on the sign count of its LDL^T factors,
-// at most 1; 1 before the first step.
-func (l *lanczos) smallest() float64 {
-	low, high := 0.0, 1.0
-	if len(l.inverse) == 0 {
-		return 1
-	}
-	for range 30 {
-		mid := math.Sqrt(max(low, 1e-16) * high)
-		if high/max(low, 1e-16) < 1.1 {
-			break
-		}
-		if l.below(mid) {
-			high = mid
-		} else {
-			low = mid
+		col.slack = max(col.slack, m.slack(&col.spectrum))
+		if round > 0 && !(rr[c] <= tol*tol*col.bb && rr[c] <= 1.5*col.claimed) {
+			doubt = true
 		}
 	}
-	return high
+	var z applied
+	if doubt {
+		z = m.apply(k, size)
+	}
+	going := false
+	for c := range columns {
+		col := &columns[c]
+		if col.bb <= 0 || rr[c] == 0 {
+			col.active = false
+			continue
+		}
+		col.active = true
+		if round > 0 {
+			if doubt {
+				col.largest = z.largest[c]
+			}
+			col.stats.Correction = col.largest * col.slack / k.scale(c)
+			col.stats.Converged = col.stats.Residual <= tol && col.stats.Correction <= tol
+			col.active = !col.stats.Converged && round < restarts && rr[c] < col.first/4
+		}
+		going = going || col.active
+		col.first, col.lowest, col.lowestAt, col.spectrum = rr[c], rr[c], 0, lanczos{}
+	}
+	return going
 }
 
-// below says whether an eigenvalue lies below t.
-func (l *lanczos) below(t float64) bool {
-	d := 1.0
-	for k, inv := range l.inverse {
-		tk := inv - t
-		if k > 0 {
-			prev := l.inverse[k-1]
-			tk += l.beta[k] * prev * (1 - prev/d)
-		}
-		if tk <= 0 {
-			return true
-		}
-		d = tk
-	}
-	return false
+// small says whether the residual^2 rr and the last max |z| of column c are within the tolerance. The latter belongs
+// to the residual before, which errs on the safe side.
+func (k *block) small(c int, col *column, rr, tol float64, m preconditioner) bool {
+	return rr <= tol*tol*col.bb && col.largest*max(col.slack, m.slack(&col.spectrum)) <= tol*k.scale(c)
 }

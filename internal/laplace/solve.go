@@ -4,8 +4,6 @@ import (
 	"context"
 	"fmt"
 	"math"
-
-	"pinfill/internal/parallel"
 )
 
 // SolveDirichlet finds the potentials for each right-hand side: values[k] holds one value for each fixed vertex, x[k]
@@ -58,7 +56,6 @@ type job struct {
 	load  func(b, t []float64) // the right-hand side and the scaled guess
 	store func(t []float64)    // the answer, back in the caller's units
 	unit  float64              // scale of t if known beforehand, else 0: max |t|
-	clamp bool                 // t is known to lie in [-1, 1]
 }
 
 // dirichlet scales values to [-1, 1]: y = mid + half t.
@@ -97,7 +94,7 @@ func (s *System) dirichlet(values, x []float64) (job, error) {
 			x[v] = values[k]
 		}
 	}
-	return job{load: load, store: store, unit: 1, clamp: true}, nil
+	return job{load: load, store: store, unit: 1}, nil
 }
 
 // poisson scales the currents to largest 1.
@@ -136,46 +133,4 @@ func finite(v float64) float64 {
 		return 0
 	}
 	return v
-}
-
-// run solves the jobs one after the other with the engine that the policy picks.
-func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error) {
-	total := Stats{Converged: true}
-	n := s.a.n
-	b, t := make([]float64, n), make([]float64, n)
-	for _, j := range jobs {
-		if err := ctx.Err(); err != nil {
-			return total, err
-		}
-		j.load(b, t)
-		st, err := s.solveOne(ctx, b, t, j, tol)
-		if err != nil {
-			return total, err
-		}
-		j.store(t)
-		total.merge(st)
-	}
-	return total, nil
-}
-
-// solveOne solves A t = b from the guess t.
-func (s *System) solveOne(ctx context.Context, b, t []float64, j job, tol float64) (Stats, error) {
-	if s.a.norm2(s.options.Workers, b) == 0 && maxAbs(s.options.Workers, b) == 0 {
-		clear(t)
-		return Stats{Method: s.options.Method, Converged: true}, nil
-	}
-	if s.options.Method == Direct || s.options.Method == Auto && s.a.n <= directAlways {
-		return s.solveDirect(ctx, b, t, j, tol)
-	}
-	return s.pcg(ctx, b, t, j, tol, &jacobi{a: &s.a, workers: s.options.Workers})
-}
-
-func maxAbs(workers int, v []float64) float64 {
-	return parallel.Max(workers, len(v), sumChunk, func(lo, hi int) float64 {
-		m := 0.0
-		for _, x := range v[lo:hi] {
-			m = max(m, math.Abs(x))
-		}
-		return m
-	})
 }
