@@ -13,6 +13,7 @@ type plan struct {
 	problem  Problem
 	settings Settings
 	regions  []region
+	anchor   []int32            // vertex whose value each pendant vertex takes, or -1
 	engines  []*plaplace.Solver // one a region, made when first used; finite p
 	progress func(share float64)
 }
@@ -21,11 +22,11 @@ func newPlan(ctx context.Context, p Problem, s Settings) (*plan, error) {
 	if err := checkGraph(p); err != nil {
 		return nil, err
 	}
-	rs, err := regions(p)
+	rs, anchor, err := regions(p)
 	if err != nil {
 		return nil, err
 	}
-	return &plan{problem: p, settings: s, regions: rs, engines: make([]*plaplace.Solver, len(rs))}, ctx.Err()
+	return &plan{problem: p, settings: s, regions: rs, anchor: anchor, engines: make([]*plaplace.Solver, len(rs))}, ctx.Err()
 }
 
 // scale maps given values to shares of their range and back, by differences, so that an offset far larger than the
@@ -85,6 +86,11 @@ func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error
 	}
 	for k, v := range pl.problem.Fixed {
 		res.Values[v] = values[k]
+	}
+	for v, a := range pl.anchor {
+		if a >= 0 {
+			res.Values[v] = res.Values[a]
+		}
 	}
 	if math.IsInf(pl.problem.P, 1) {
 		res.Certificate.Gap, res.Certificate.Imbalance = math.NaN(), math.NaN()
@@ -175,10 +181,16 @@ func (c *Certificate) add(r plaplace.Certificate, ratio float64) {
 // verify certifies a vector for one set of values.
 func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, error) {
 	var cert Certificate
+	off := 0.0 // how far pendant vertices are from the vertex they hang from
 	whole := scaleOf(values)
 	for k, v := range pl.problem.Fixed {
 		if d := math.Abs(f[v] - values[k]); d > 0 {
 			cert.Width = math.Max(cert.Width, d/whole.size)
+		}
+	}
+	for v, a := range pl.anchor {
+		if a >= 0 {
+			off = math.Max(off, math.Abs(f[v]-f[a])/whole.size)
 		}
 	}
 	if math.IsInf(pl.problem.P, 1) {
@@ -217,5 +229,6 @@ func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, e
 		}
 		cert.add(got, own.size/whole.size)
 	}
+	cert.Width += off
 	return cert, nil
 }

@@ -17,10 +17,15 @@ type region struct {
 	free     int
 }
 
-// regions cuts the graph. The error is an *UnreachableError. Time and memory are O(n + edges).
-func regions(p Problem) ([]region, error) {
+const (
+	fixedMark   = -2
+	pendantMark = -3
+)
+
+// regions cuts the graph and leaves out the pendant vertices, for which it gives the vertex each hangs from (see
+// pendants). The error is an *UnreachableError. Time and memory are O(n + edges).
+func regions(p Problem) ([]region, []int32, error) {
 	g := p.Graph
-	const fixedMark = -2
 	label := make([]int32, g.N)
 	for v := range label {
 		label[v] = -1
@@ -54,10 +59,17 @@ func regions(p Problem) ([]region, error) {
 			}
 		}
 		if !held {
-			return nil, &UnreachableError{Vertex: start}
+			return nil, nil, &UnreachableError{Vertex: start}
 		}
 		count++
 		sizes = append(sizes, size)
+	}
+	anchor := pendants(g, func(v int32) bool { return label[v] == fixedMark })
+	for v, a := range anchor {
+		if a >= 0 {
+			sizes[label[v]]--
+			label[v] = pendantMark
+		}
 	}
 	out := make([]region, count)
 	for c := range out {
@@ -68,6 +80,8 @@ func regions(p Problem) ([]region, error) {
 	for v := range g.N {
 		if c := label[v]; c >= 0 {
 			out[c].vertices = append(out[c].vertices, int32(v))
+			continue
+		} else if c == pendantMark {
 			continue
 		}
 		cols, _ := g.Row(v)
@@ -90,7 +104,7 @@ func regions(p Problem) ([]region, error) {
 	for c := range out {
 		out[c].cut(p, int32(c), label, place)
 	}
-	return out, nil
+	return out, anchor, nil
 }
 
 // cut fills the graph of region c; place is scratch.
@@ -112,7 +126,7 @@ func (r *region) cut(p Problem, c int32, label, place []int32) {
 		cols, vals := g.Row(int(v))
 		inside := label[v] == c
 		for t, u := range cols {
-			if !inside && label[u] != c {
+			if label[u] == pendantMark || !inside && label[u] != c {
 				continue
 			}
 			a := slopeLog(p, vals[t])
