@@ -1,0 +1,52 @@
+package lexmin
+
+import (
+	"context"
+	"math"
+	"testing"
+
+	"pinfill/internal/testproblems"
+)
+
+func solve(t *testing.T, pr testproblems.Problem, workers int) []float64 {
+	t.Helper()
+	f, _, err := Solve(context.Background(), pr.Graph, pr.Fixed, pr.Values, Options{Workers: workers})
+	if err != nil {
+		t.Fatalf("%s: %v", pr.Name, err)
+	}
+	return f
+}
+
+// Closed forms of series, parallel, stars and stencils, see testproblems.
+func TestClosedForms(t *testing.T) {
+	for _, pr := range testproblems.Closed() {
+		if !math.IsInf(pr.P, 1) {
+			continue
+		}
+		tolerance := 1e-14 // a few roundings of values of the size of the range
+		if pr.Printed() {
+			tolerance = testproblems.PrintedTolerance
+		}
+		if e := pr.Error(solve(t, pr, 1)); !(e <= tolerance) {
+			t.Errorf("%s: error %g", pr.Name, e)
+		}
+	}
+}
+
+var inf = math.Inf(1)
+
+// Repeated removal of the steepest path found by search from every held vertex (testproblems.SteepestPaths).
+func TestRandomAgainstRemoval(t *testing.T) {
+	options := []testproblems.Options{
+		{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
+		{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
+	}
+	for seed := range uint64(300) {
+		pr := testproblems.Random(seed, inf, options[seed%uint64(len(options))])
+		want := testproblems.SteepestPaths(pr)
+		got := solve(t, pr, 2)
+		if e := testproblems.Distance(got, want) / pr.Range(); !(e <= 1e-9) {
+			t.Errorf("%s: %g off", pr.Name, e)
+		}
+	}
+}

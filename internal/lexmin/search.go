@@ -1,0 +1,187 @@
+package lexmin
+
+import (
+	"math"
+	"slices"
+)
+
+// slack is the relative difference of slopes below which two paths count as equally steep. It covers the rounding of
+// lengths summed along a path; the values differ by no more than this share of the steepest slope.
+const slack = 1e-14
+
+// small is the set size from which on the steepest path itself is sought, not a level that halves the set.
+const small = 48
+
+// pivot gives the vertex of q with the greatest slope found so far (the first of those), and the next level to look at.
+func (w *worker) pivot(q []int32) (best int32, beta float64) {
+	best = q[0]
+	for _, v := range q {
+		if w.slope[v] > w.slope[best] {
+			best = v
+		}
+	}
+	if len(q) <= small {
+		return best, w.slope[best]
+	}
+	var sample [64]float64
+	stride := (len(q) + len(sample) - 1) / len(sample)
+	count := 0
+	for i := stride / 2; i < len(q); i += stride {
+		sample[count] = w.slope[q[i]]
+		count++
+	}
+	slices.Sort(sample[:count])
+	return best, sample[int(quantile*float64(count))]
+}
+
+// quantile of the slopes found so far that is taken as the next level.
+const quantile = .6
+
+// steeper gives the vertices of q, a set with number id, through which a path steeper than beta may pass, with both
+// bounds and the slope behind them. lower must hold keys that bound those to come from below. It writes upper
+// wherever the search comes.
+func (w *worker) steeper(q []int32, id int32, beta float64) []int32 {
+	pass := w.ids.Add(1)
+	w.search(q, id, beta, 1, w.upper, w.lower, pass, false)
+	return w.search(q, id, beta, -1, w.lower, w.upper, pass, true)
+}
+
+// loosen sets the lower bounds of a set to the least that can be said: no value beyond the greatest met.
+func (w *worker) loosen(q []int32) {
+	high := math.Inf(-1)
+	for _, v := range q {
+		for k := w.g.RowPtr[v]; k < w.g.RowPtr[v+1]; k++ {
+			if u := w.g.Col[k]; w.set[u] == held {
+				high = max(high, w.f[u])
+			}
+		}
+	}
+	for _, v := range q {
+		w.lower[v].key = -high
+	}
+}
+
+// search is Dijkstra's method from the held vertices around q: own becomes the least sign*y_t + alpha d_t, wherever
+// that and the other bound leave room for a path steeper than alpha. The first search takes the other bound from
+// an earlier, lower level; the second takes it from the first, and gives the vertices it settles, with their slopes.
+// A vertex between a vertex with room and the held vertex it hangs on has room too, so nothing is cut off by
+// stopping where there is none.
+func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []bound, pass int32, second bool) []int32 {
+	tight := alpha * (1 + slack)
+	g, length, set, f := w.g, w.length, w.set, w.f
+	h := w.heap[:0]
+	for _, v := range q {
+		if second && other[v].pass != pass {
+			continue
+		}
+		b := bound{key: math.Inf(1), pass: pass}
+		for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
+			u := g.Col[k]
+			if set[u] != held {
+				continue
+			}
+			if key := sign*f[u] + float64(alpha*length[k]); key < b.key {
+				b.key, b.value, b.dist, b.parent = key, sign*f[u], length[k], u
+			}
+		}
+		if b.key < math.Inf(1) && room(&b, &other[v], tight, second) {
+			own[v] = b
+			h = append(h, item{b.key, v})
+		}
+	}
+	h.init()
+	from := len(w.stack)
+	pops := 0
+	for len(h) > 0 {
+		top := h.pop()
+		pops++
+		v := top.v
+		b := own[v]
+		if b.key != top.key {
+			continue // an older, greater entry
+		}
+		if second {
+			w.stack = append(w.stack, v)
+			w.slope[v] = -(b.value + other[v].value) / (b.dist + other[v].dist)
+		}
+		lo, hi := g.RowPtr[v], g.RowPtr[v+1]
+		cols := g.Col[lo:hi]
+		lens := length[lo:hi]
+		lens = lens[:len(cols)]
+		for k, u := range cols {
+			if set[u] != id {
+				continue
+			}
+			next := bound{dist: b.dist + lens[k], value: b.value, parent: v, pass: pass}
+			next.key = next.value + float64(alpha*next.dist)
+			if o := &own[u]; o.pass == pass && o.key <= next.key {
+				continue
+			}
+			o := &other[u]
+			if (second && o.pass != pass) || !room(&next, o, tight, second) {
+				continue
+			}
+			own[u] = next
+			h.push(item{next.key, u})
+		}
+		if pops&0xffff == 0 && w.stop.Load() {
+			break
+		}
+	}
+	w.heap = h
+	w.searches.Add(1)
+	w.pops.Add(int64(pops))
+	return w.stack[from:]
+}
+
+// room says whether a path steeper than the level may pass between two bounds. In the second search both stand at
+// the same level, and the slope itself is compared: keys of nearly equal values cancel.
+func room(own, other *bound, tight float64, second bool) bool {
+	if second {
+		return -(own.value + other.value) > float64(tight*(own.dist+other.dist))
+	}
+	return own.key+other.key < 0
+}
+
+// distances is Dijkstra's method from the held vertices of one value: own becomes their distance.
+func (w *worker) distances(q []int32, id int32, value, sign float64, own []bound, pass int32) {
+	g := w.g
+	h := w.heap[:0]
+	for _, v := range q {
+		b := bound{key: math.Inf(1), value: sign * value, pass: pass}
+		for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
+			if u := g.Col[k]; w.set[u] == held && w.f[u] == value && w.length[k] < b.key {
+				b.key, b.dist, b.parent = w.length[k], w.length[k], u
+			}
+		}
+		own[v] = b
+		if b.key < math.Inf(1) {
+			h = append(h, item{b.key, v})
+		}
+	}
+	h.init()
+	pops := 0
+	for len(h) > 0 {
+		top := h.pop()
+		pops++
+		if own[top.v].key != top.key {
+			continue
+		}
+		for k := g.RowPtr[top.v]; k < g.RowPtr[top.v+1]; k++ {
+			u := g.Col[k]
+			if w.set[u] != id {
+				continue
+			}
+			if d := top.key + w.length[k]; d < own[u].key {
+				own[u].key, own[u].dist, own[u].parent = d, d, top.v
+				h.push(item{d, u})
+			}
+		}
+		if pops&0xffff == 0 && w.stop.Load() {
+			break
+		}
+	}
+	w.heap = h
+	w.searches.Add(1)
+	w.pops.Add(int64(pops))
+}
