@@ -26,7 +26,7 @@ type Search string
 const (
 	Exact       Search = "exact"       // the true neighbours, however long it takes
 	Approximate Search = "approximate" // nearly all the true neighbours, their share measured and reported
-	Auto        Search = "auto"        // Approximate where Exact would compute more than AutoLimit coordinate differences, Exact elsewhere
+	Auto        Search = "auto"        // Approximate where Exact is expected to cost more than AutoLimit, Exact elsewhere
 )
 
 // Options steer a search. The zero value means exact, Euclidean, all processors, no progress.
@@ -50,6 +50,15 @@ type Lists struct {
 func (l *Lists) Row(i int) ([]int32, []float64) {
 	lo, hi := i*l.K, (i+1)*l.K
 	return l.Index[lo:hi:hi], l.Dist[lo:hi:hi]
+}
+
+func newLists(n, k int) *Lists {
+	return &Lists{N: n, K: k, Index: make([]int32, n*k), Dist: make([]float64, n*k)}
+}
+
+// finish turns closeness into distance.
+func (l *Lists) finish(m points.Metric, workers int) {
+	parallel.For(workers, len(l.Dist), 1<<16, func(lo, hi int) { distances(m, l.Dist[lo:hi]) })
 }
 
 // Ragged holds lists of various lengths: that of point i is [Start[i], Start[i+1]).
@@ -85,6 +94,16 @@ func KNearest(ctx context.Context, pts *points.Matrix, k int, o Options) (*Lists
 	t, err := newTree(ctx, pts, o)
 	if err != nil {
 		return nil, Report{}, err
+	}
+	if o.Search == Approximate && pts.N >= fewPoints {
+		return t.approximate(ctx, k, o)
+	}
+	p := t.plan(k, o)
+	switch {
+	case o.Search == Auto && p.work > AutoLimit:
+		return t.approximate(ctx, k, o)
+	case p.blocks != nil:
+		return p.blocks.all(ctx, k, o)
 	}
 	return t.all(ctx, k, o)
 }

@@ -67,9 +67,6 @@ func WithinRadius(ctx context.Context, pts *points.Matrix, radius float64, o Opt
 	return b.gather(out, o.Workers), Report{Engine: "buckets", Exact: true, Recall: 1, Distances: computed.Load()}, nil
 }
 
-// bucketSize is the largest number of points in a bucket, a multiple of points.Leaf.
-const bucketSize = 4 * points.Leaf
-
 // buckets are the nodes of one level of a tree, indexed by their centres.
 type buckets struct {
 	t       *tree
@@ -85,7 +82,7 @@ type class struct {
 }
 
 func newBuckets(t *tree) *buckets {
-	b := &buckets{t: t, level: max(0, t.levels-2)}
+	b := &buckets{t: t, level: t.bucketLevel()}
 	files := map[int][]kdtree.Point{}
 	for i := range b.count() {
 		low, high := t.lowHigh(b.count() + i)

@@ -120,8 +120,9 @@ func (t *tree) gap(q []float64, v int) float64 {
 type finder struct {
 	t         *tree
 	best      best
-	near      func(a, b []float64) float64
-	distances int64
+	near      func(a, b []float64, most float64) float64
+	distances int64 // computed so far
+	boxes     int64 // looked at so far
 	stack     []pending
 }
 
@@ -132,7 +133,7 @@ type pending struct {
 }
 
 func (t *tree) finder() *finder {
-	return &finder{t: t, best: best{pts: t.pts, id: t.id}, near: closeness(t.metric), stack: make([]pending, 0, 2*t.levels+2)}
+	return &finder{t: t, best: best{pts: t.pts, id: t.id}, near: upTo(t.metric), stack: make([]pending, 0, 2*t.levels+2)}
 }
 
 // nearest fills close and index with the places of the points nearest to q. There must be len(close) of them.
@@ -163,6 +164,7 @@ func (f *finder) descend(q []float64, v int, gap float64) {
 	for {
 		for v < leaves && gap <= f.best.worst {
 			near, far := f.t.gap(q, 2*v), f.t.gap(q, 2*v+1)
+			f.boxes += 2
 			v *= 2
 			w := v + 1
 			if far < near {
@@ -216,7 +218,7 @@ func (f *finder) scan(q []float64, lo, hi int) {
 		}
 	default:
 		for i := lo; i < hi; i++ {
-			if c := f.near(q, rows[:d]); c <= worst {
+			if c := f.near(q, rows[:d], worst); c <= worst {
 				worst = f.best.offer(c, int32(i))
 			}
 			rows = rows[d:]
@@ -227,7 +229,7 @@ func (f *finder) scan(q []float64, lo, hi int) {
 // all finds the k nearest of every point of the tree.
 func (t *tree) all(ctx context.Context, k int, o Options) (*Lists, Report, error) {
 	n := t.pts.N
-	out := &Lists{N: n, K: k, Index: make([]int32, n*k), Dist: make([]float64, n*k)}
+	out := newLists(n, k)
 	finders := make([]*finder, o.Workers)
 	step := newSteps(1<<t.levels, o.Progress)
 	parallel.ForChunk(o.Workers, 1<<t.levels, 64, func(w, _, from, to int) {
@@ -252,7 +254,7 @@ func (t *tree) all(ctx context.Context, k int, o Options) (*Lists, Report, error
 	if err := ctx.Err(); err != nil {
 		return nil, Report{}, err
 	}
-	parallel.For(o.Workers, n*k, 1<<16, func(lo, hi int) { distances(t.metric, out.Dist[lo:hi]) })
+	out.finish(t.metric, o.Workers)
 	rep := Report{Engine: "tree", Exact: true, Recall: 1}
 	for _, f := range finders {
 		if f != nil {
