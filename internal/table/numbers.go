@@ -42,9 +42,15 @@ func (t *Table) Numbers(ctx context.Context, cols []int, o NumberOptions) (*Numb
 		return nil, overMemory(t.head, "S15", fmt.Sprintf("%d rows of %d numbers need %d bytes of memory", t.rows, len(cols), need))
 	}
 	n.Data = make([]float64, t.rows*len(cols))
-	target := make([][]int32, t.head.cols) // table column -> columns of Data
+	target := make([]int, t.head.cols) // table column -> column of Data, or -1
+	for c := range target {
+		target[c] = -1
+	}
 	for k, c := range cols {
-		target[c] = append(target[c], int32(k))
+		if target[c] >= 0 {
+			return nil, fmt.Errorf("table: column %d asked for twice", c)
+		}
+		target[c] = k
 	}
 	parts := make([]part, (t.rows+rowGrain-1)/rowGrain)
 	var stop atomic.Bool
@@ -56,19 +62,7 @@ func (t *Table) Numbers(ctx context.Context, cols []int, o NumberOptions) (*Numb
 			stop.Store(true)
 			return
 		}
-		p := &parts[chunk]
-		t.eachCell(lo, hi, func(row, col int, raw []byte) {
-			if len(target[col]) == 0 {
-				return
-			}
-			v, bad := p.number(t.head, raw, o.Decimal)
-			if bad {
-				p.refuse(t, row, col, o.Decimal)
-			}
-			for _, k := range target[col] {
-				n.Data[row*n.Cols+int(k)] = v
-			}
-		})
+		parts[chunk].rows(t, n, target, lo, hi, o.Decimal)
 	})
 	if err := ctx.Err(); err != nil {
 		return nil, context.Cause(ctx)
@@ -111,6 +105,51 @@ type part struct {
 	refused               []*fault.Error // at most shownEach a column
 	shown                 map[int]int
 	more                  int
+}
+
+// rows reads rows lo to hi. Most cells are plain numbers and end where the number ends: those take one pass over their
+// bytes. Any other goes to number.
+func (p *part) rows(t *Table, n *Numbers, target []int, lo, hi int, decimal byte) {
+	h := t.head
+	last := -1 // table column after which a row holds nothing wanted
+	for c, k := range target {
+		if k >= 0 {
+			last = c
+		}
+	}
+	sign := decimal
+	if sign == h.delim {
+		sign = 0 // it ends an unquoted cell
+	}
+	for row := lo; row < hi; {
+		b, i := t.find(row)
+		data := b.data
+		for ; i < b.rows() && row < hi; i, row = i+1, row+1 {
+			out := n.Data[row*n.Cols : (row+1)*n.Cols]
+			pos, end := int(b.starts[i]), int(b.starts[i+1])
+			end = int(b.starts[i]) + len(trimEnd(data[pos:end]))
+			for col := 0; col <= last; col++ {
+				k := target[col]
+				if k < 0 {
+					pos += cellEnd(data[pos:end], 0, h.delim) + 1
+					continue
+				}
+				v, next, err := scanNumber(data, pos, sign)
+				if err == 0 && (next == end || next < end && data[next] == h.delim) && len(h.na) == 0 && v <= maxWhole && v >= -maxWhole {
+					out[k] = v
+					pos = next + 1
+					continue
+				}
+				next = pos + cellEnd(data[pos:end], 0, h.delim)
+				v, bad := p.number(h, data[pos:next], decimal)
+				if bad {
+					p.refuse(t, row, col, decimal)
+				}
+				out[k] = v
+				pos = next + 1
+			}
+		}
+	}
 }
 
 // number reads one raw cell; bad means that it is neither missing nor a number.
