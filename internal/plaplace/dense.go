@@ -27,11 +27,13 @@ type dense struct {
 	a     []float64 // n rows of n+1: off-diagonals (positive), the diagonal slot unused, excess last
 	rhs   []float64
 	pivot []float64
+
+	weight []float64 // scratch of solve, one a stored entry
 }
 
 func newDense(s *Solver) *dense {
 	n := len(s.free)
-	d := &dense{s: s, place: make([]int32, s.n), a: make([]float64, n*(n+1)), rhs: make([]float64, n), pivot: make([]float64, n)}
+	d := &dense{s: s, place: make([]int32, s.n), a: make([]float64, n*(n+1)), rhs: make([]float64, n), pivot: make([]float64, n), weight: make([]float64, s.graph.NNZ())}
 	for k, v := range s.free {
 		d.place[v] = int32(k)
 	}
@@ -41,6 +43,18 @@ func newDense(s *Solver) *dense {
 var _ engine = (*dense)(nil)
 
 func (d *dense) solve(ctx context.Context, lc, rowMax, b, x []float64, _ float64) error {
+	s, g := d.s, d.s.graph
+	for _, v := range s.free {
+		for t := g.RowPtr[v]; t < g.RowPtr[v+1]; t++ {
+			d.weight[t] = math.Exp(lc[s.slot[t]] - rowMax[v])
+		}
+	}
+	d.solveRows(d.weight, b, x)
+	return ctx.Err()
+}
+
+// solveRows solves sum_j weight_ij (x_i - x_j) = b_i; weight is one a stored entry of the graph.
+func (d *dense) solveRows(weight, b, x []float64) {
 	s, n := d.s, len(d.s.free)
 	w := n + 1
 	clear(d.a)
@@ -48,11 +62,10 @@ func (d *dense) solve(ctx context.Context, lc, rowMax, b, x []float64, _ float64
 		row := d.a[k*w : (k+1)*w]
 		g := s.graph
 		for t := g.RowPtr[v]; t < g.RowPtr[v+1]; t++ {
-			c := math.Exp(lc[s.slot[t]] - rowMax[v])
 			if u := g.Col[t]; s.isFixed[u] {
-				row[n] += c
+				row[n] += weight[t]
 			} else {
-				row[d.place[u]] = c
+				row[d.place[u]] = weight[t]
 			}
 		}
 		d.rhs[k] = b[v]
@@ -87,5 +100,4 @@ func (d *dense) solve(ctx context.Context, lc, rowMax, b, x []float64, _ float64
 		x[s.free[k]] = t / d.pivot[k]
 	}
 	s.counts.LinearSolves++
-	return ctx.Err()
 }

@@ -67,26 +67,31 @@ func (s *Solver) descend(ctx context.Context, x point, w *work, warm bool) error
 	return err
 }
 
-// finish polishes f in extended precision and certifies it.
+// finish polishes f in extended precision and certifies it. Where that misses the tolerance and the system is small,
+// the nodal form gets a turn.
 func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance float64) (Result, error) {
 	x := point{f: f, h: make([]float64, s.n)}
-	res := Result{Values: f}
-	last := math.Inf(1)
-	for range 6 {
-		step, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 0, 1e-5, 1, true)
-		if err != nil {
-			return res, err
-		}
-		if step < 1e-15 || step > 0.5*last && step < 1e-10 {
-			break
-		}
-		last = step
+	if err := s.polish(ctx, x, w, 6); err != nil {
+		return Result{Values: f, Counts: s.counts}, err
 	}
 	c, ok, err := s.enclose(ctx, x, w, max(widest, 100*tolerance))
-	if err != nil {
-		return res, err
+	if eng, small := s.engine.(*dense); small && s.p > 2 && err == nil && !(ok && c.width <= tolerance) {
+		for v := range f {
+			f[v] = min(max(x.sum(v), 0), 1)
+		}
+		clear(x.h)
+		err = s.nodal(ctx, point{f: f}, w, eng, 60)
+		if err == nil {
+			err = s.nodal(ctx, x, w, eng, 8)
+		}
+		if err == nil {
+			c, ok, err = s.enclose(ctx, x, w, max(widest, 100*tolerance))
+		}
 	}
-	res.Values = make([]float64, s.n)
+	if err != nil {
+		return Result{Values: f, Counts: s.counts}, err
+	}
+	res := Result{Values: make([]float64, s.n), Counts: s.counts}
 	for v := range f {
 		res.Values[v] = min(max(x.sum(v), 0), 1)
 	}
@@ -94,6 +99,21 @@ func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance flo
 		res.Values[v] = f[v]
 	}
 	res.Certificate = s.certificate(x, res.Values, c, ok)
-	res.Counts = s.counts
 	return res, nil
+}
+
+// polish takes up to limit Newton steps that go to x.h, until they no longer shrink.
+func (s *Solver) polish(ctx context.Context, x point, w *work, limit int) error {
+	last := math.Inf(1)
+	for range limit {
+		step, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 0, 1e-5, 1, true)
+		if err != nil {
+			return err
+		}
+		if step < 1e-15 || step > 0.5*last && step < 1e-10 {
+			break
+		}
+		last = step
+	}
+	return nil
 }

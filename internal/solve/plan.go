@@ -2,7 +2,6 @@ package solve
 
 import (
 	"context"
-	"errors"
 	"math"
 
 	"pinfill/internal/plaplace"
@@ -51,8 +50,6 @@ func (c scale) value(t float64) float64 {
 	return min(max(c.least+float64(t*c.size), c.least), c.least+c.size)
 }
 
-var errInfinite = errors.New("p = inf is not connected yet")
-
 // run solves for one set of values.
 func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error) {
 	n := pl.problem.Graph.N
@@ -93,7 +90,7 @@ func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error
 		}
 	}
 	if math.IsInf(pl.problem.P, 1) {
-		res.Certificate.Gap, res.Certificate.Imbalance = math.NaN(), math.NaN()
+		res.Certificate.Gap, res.Certificate.Imbalance, res.Certificate.Width = math.NaN(), math.NaN(), math.NaN()
 	} else {
 		res.Certificate.SlopeImbalance = math.NaN()
 	}
@@ -136,13 +133,23 @@ func (pl *plan) engine(ctx context.Context, c int) (*plaplace.Solver, error) {
 
 // runRegion solves region c for the values y at its fixed vertices and adds what it finds to res.
 func (pl *plan) runRegion(ctx context.Context, c int, y []float64, own, whole scale, start []float64, res *Result) error {
-	if math.IsInf(pl.problem.P, 1) {
-		return errInfinite
-	}
 	r := &pl.regions[c]
 	shares := make([]float64, len(y))
 	for k := range y {
 		shares[k] = own.share(y[k])
+	}
+	if math.IsInf(pl.problem.P, 1) {
+		f, cert, paths, err := pl.runInfinite(ctx, c, shares)
+		if err != nil {
+			return err
+		}
+		for k, v := range r.vertices {
+			res.Values[v] = own.value(f[k])
+		}
+		res.Status = Certified
+		res.Certificate.SlopeImbalance = math.Max(res.Certificate.SlopeImbalance, cert.imbalance)
+		res.Counts.Paths += paths
+		return nil
 	}
 	var guess []float64
 	if start != nil {
@@ -193,10 +200,12 @@ func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, e
 			off = math.Max(off, math.Abs(f[v]-f[a])/whole.size)
 		}
 	}
-	if math.IsInf(pl.problem.P, 1) {
-		return cert, errInfinite
+	infinite := math.IsInf(pl.problem.P, 1)
+	if infinite {
+		cert.Gap, cert.Imbalance = math.NaN(), math.NaN()
+	} else {
+		cert.SlopeImbalance = math.NaN()
 	}
-	cert.SlopeImbalance = math.NaN()
 	for c := range pl.regions {
 		r := &pl.regions[c]
 		y := make([]float64, len(r.given))
@@ -219,6 +228,13 @@ func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, e
 		for k, v := range r.fixed {
 			shares[v] = own.share(y[k])
 		}
+		if infinite {
+			for k := range y {
+				y[k] = own.share(y[k])
+			}
+			cert.SlopeImbalance = math.Max(cert.SlopeImbalance, certifyInfinite(r, y, shares).imbalance)
+			continue
+		}
 		s, err := pl.engine(ctx, c)
 		if err != nil {
 			return cert, err
@@ -230,5 +246,8 @@ func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, e
 		cert.add(got, own.size/whole.size)
 	}
 	cert.Width += off
+	if infinite && cert.Width == 0 {
+		cert.Width = math.NaN() // no bound is derived
+	}
 	return cert, nil
 }
