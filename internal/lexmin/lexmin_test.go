@@ -35,14 +35,16 @@ func TestClosedForms(t *testing.T) {
 
 var inf = math.Inf(1)
 
+// mixed are the kinds of random problem that every property is tried on in turn.
+var mixed = []testproblems.Options{
+	{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
+	{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
+}
+
 // Repeated removal of the steepest path found by search from every held vertex (testproblems.SteepestPaths).
 func TestRandomAgainstRemoval(t *testing.T) {
-	options := []testproblems.Options{
-		{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
-		{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
-	}
 	for seed := range uint64(300) {
-		pr := testproblems.Random(seed, inf, options[seed%uint64(len(options))])
+		pr := testproblems.Random(seed, inf, mixed[seed%uint64(len(mixed))])
 		want := testproblems.SteepestPaths(pr)
 		got := solve(t, pr, 2)
 		if e := testproblems.Distance(got, want) / pr.Range(); !(e <= 1e-9) {

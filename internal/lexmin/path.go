@@ -1,5 +1,7 @@
 package lexmin
 
+import "math"
+
 // step is a vertex of a path and the value it gets.
 type step struct {
 	v     int32
@@ -37,42 +39,44 @@ func (w *worker) fix(path []step) {
 	w.settle(count)
 }
 
-// star settles a vertex all of whose neighbours within reach are held: the steepest pair decides. The slope is raised
-// from alpha to that of the pair found at the last one until it stays (Dinkelbach's method for a ratio).
+// star settles a vertex all of whose neighbours within reach are held.
 func (w *worker) star(v int32, alpha float64) {
-	g := w.g
-	lo, hi := g.RowPtr[v], g.RowPtr[v+1]
+	w.f[v] = w.balance(v, w.f, alpha)
+	w.set[v] = held
+	w.paths.Add(1)
+	w.settle(1)
+}
+
+// balance gives the value of v at which the steepest slope up to its neighbours equals the steepest down; neighbours
+// whose value is NaN do not count. A pair of neighbours decides, the one with the greatest slope across v: the slope is
+// raised from alpha, which is below it, to that of the pair found at the last one until it stays (Dinkelbach's method
+// for a ratio).
+func (s *solver) balance(v int32, value []float64, alpha float64) float64 {
+	lo, hi := s.g.RowPtr[v], s.g.RowPtr[v+1]
+	cols, lens := s.g.Col[lo:hi], s.length[lo:hi]
 	for {
-		above, below := -1, -1
-		var keyAbove, keyBelow float64
-		for k := lo; k < hi; k++ {
-			u := g.Col[k]
-			if w.set[u] != held {
-				continue
-			}
-			drop := float64(alpha * w.length[k])
-			if key := w.f[u] - drop; above < 0 || key > keyAbove {
+		above, below := 0, 0
+		keyAbove, keyBelow := math.Inf(-1), math.Inf(1)
+		for k, u := range cols {
+			drop := float64(alpha * lens[k])
+			if key := value[u] - drop; key > keyAbove {
 				above, keyAbove = k, key
 			}
-			if key := w.f[u] + drop; below < 0 || key < keyBelow {
+			if key := value[u] + drop; key < keyBelow {
 				below, keyBelow = k, key
 			}
 		}
-		high, low := w.f[g.Col[above]], w.f[g.Col[below]]
-		slope := (high - low) / (w.length[above] + w.length[below])
+		high, low := value[cols[above]], value[cols[below]]
+		slope := (high - low) / (lens[above] + lens[below])
 		if slope > alpha*(1+slack) {
 			alpha = slope
 			continue
 		}
 		// The nearer end gives the more exact value.
-		value := low + float64(alpha*w.length[below])
-		if w.length[above] < w.length[below] {
-			value = high - float64(alpha*w.length[above])
+		t := low + float64(alpha*lens[below])
+		if lens[above] < lens[below] {
+			t = high - float64(alpha*lens[above])
 		}
-		w.f[v] = min(max(value, low), high)
-		w.set[v] = held
-		break
+		return min(max(t, low), high)
 	}
-	w.paths.Add(1)
-	w.settle(1)
 }

@@ -40,6 +40,17 @@ func (s *solver) meetsHeld(v int32) bool {
 // scaled settles a component after giving it lengths l = 1/w: relative to the greatest weight where all then lie in
 // [1, e^650], otherwise spread over [e^-650, e^650], and where even that is too narrow step by step (see wide).
 func (w *worker) scaled(p part) {
+	origin, wide := w.gauge(p)
+	w.measure(p, origin)
+	if wide {
+		w.wide(p)
+	} else {
+		w.begin(p)
+	}
+}
+
+// gauge gives the logarithm of the weight whose length is to be 1, and whether lengths then have to be cut.
+func (w *worker) gauge(p part) (origin float64, wide bool) {
 	low, high := math.Inf(1), math.Inf(-1)
 	for _, v := range p.vertices {
 		_, vals := w.g.Row(int(v))
@@ -48,11 +59,10 @@ func (w *worker) scaled(p part) {
 		}
 	}
 	if high-low > 2*reach {
-		w.wide(p)
-		return
+		origin, _ = w.bottleneck(p)
+		return origin, true
 	}
-	w.measure(p, high-max(0, high-low-reach))
-	w.begin(p)
+	return high - max(0, high-low-reach), false
 }
 
 // measure sets lengths to e^(origin - ln w), cut to [e^-650, e^650].
@@ -73,11 +83,6 @@ const negligible = 1e-130
 // stronger edges that are cut add nothing a float64 can show, and weaker ones lie on no path steeper than negligible.
 // Those that are steeper are settled, and what remains starts again with its own bottleneck.
 func (w *worker) wide(p part) {
-	origin, found := w.bottleneck(p)
-	if !found {
-		origin = 0
-	}
-	w.measure(p, origin)
 	base := len(w.stack)
 	defer func() { w.stack = w.stack[:base] }()
 	w.loosen(p.vertices)

@@ -48,17 +48,24 @@ func (w *worker) steeper(q []int32, id int32, beta float64) []int32 {
 
 // loosen sets the lower bounds of a set to the least that can be said: no value beyond the greatest met.
 func (w *worker) loosen(q []int32) {
-	high := math.Inf(-1)
-	for _, v := range q {
-		for k := w.g.RowPtr[v]; k < w.g.RowPtr[v+1]; k++ {
-			if u := w.g.Col[k]; w.set[u] == held {
-				high = max(high, w.f[u])
-			}
-		}
-	}
+	_, high := w.met(q)
 	for _, v := range q {
 		w.lower[v].key = -high
 	}
+}
+
+// met gives the least and the greatest held value next to a set, +Inf and -Inf where there is none.
+func (s *solver) met(q []int32) (low, high float64) {
+	low, high = math.Inf(1), math.Inf(-1)
+	for _, v := range q {
+		cols, _ := s.g.Row(int(v))
+		for _, u := range cols {
+			if s.set[u] == held {
+				low, high = min(low, s.f[u]), max(high, s.f[u])
+			}
+		}
+	}
+	return low, high
 }
 
 // search is Dijkstra's method from the held vertices around q: own becomes the least sign*y_t + alpha d_t, wherever

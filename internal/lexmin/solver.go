@@ -214,14 +214,7 @@ func (w *worker) fresh(rest []int32) {
 // begin settles a component: flat where it meets one value only, otherwise from the distances to the vertices of
 // the greatest and of the least value, the bounds at level 0.
 func (w *worker) begin(p part) {
-	low, high := math.Inf(1), math.Inf(-1)
-	for _, v := range p.vertices {
-		for k := w.g.RowPtr[v]; k < w.g.RowPtr[v+1]; k++ {
-			if u := w.g.Col[k]; w.set[u] == held {
-				low, high = min(low, w.f[u]), max(high, w.f[u])
-			}
-		}
-	}
+	low, high := w.met(p.vertices)
 	if low >= high {
 		for _, v := range p.vertices {
 			w.f[v] = low
