@@ -129,19 +129,6 @@ func TestFromListsIsTheUnionOfLists(t *testing.T) {
 	}
 }
 
-// Distances that differ by rounding between the two lists of a pair must still give one edge one value.
-func TestFromListsLevelsUnevenDistances(t *testing.T) {
-	l := &neighbors.Lists{N: 3, K: 2, Index: []int32{1, 2, 0, 2, 0, 1}, Dist: []float64{1, 2, math.Nextafter(1, 2), 3, 2, 3}}
-	g, err := FromLists(l, 2, 1)
-	if err != nil {
-		t.Fatal(err)
-	}
-	checkCSR(t, g.Skeleton)
-	if got := g.Skeleton.Val[0]; got != 1 {
-		t.Fatalf("edge {0,1} has distance %v, want the smaller, 1", got)
-	}
-}
-
 func TestFromListsRefuses(t *testing.T) {
 	good := func() *neighbors.Lists {
 		return &neighbors.Lists{N: 3, K: 2, Index: []int32{1, 2, 0, 2, 1, 0}, Dist: []float64{1, 2, 1, 3, 3, 3}}

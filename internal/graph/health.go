@@ -142,24 +142,19 @@ func (h *Health) measureWeights(a *sparse.CSR, workers int) {
 	h.EffectiveMin = slices.Min(kept)
 	h.EffectiveMedian = median(kept)
 	h.LogMin, h.LogMax = slices.Min(a.Val), slices.Max(a.Val)
-	for _, v := range a.Val {
-		if v < lowestLog {
-			h.Underflowed++
+	once := make([]float64, 0, h.Edges) // each edge's value once
+	for i := range a.N {
+		col, val := a.Row(i)
+		for t, j := range col {
+			if int(j) > i {
+				once = append(once, val[t])
+				if val[t] < lowestLog {
+					h.Underflowed++
+				}
+			}
 		}
 	}
-	h.Underflowed /= 2
-	h.LogMedian = medianOf(a.Val)
-}
-
-// medianOf is the lower median; above sampleLimit values it is that of evenly spaced ones.
-func medianOf(v []float64) float64 {
-	const sampleLimit = 1 << 20
-	step := (len(v) + sampleLimit - 1) / sampleLimit
-	s := make([]float64, 0, len(v)/step+1)
-	for t := 0; t < len(v); t += step {
-		s = append(s, v[t])
-	}
-	return median(s)
+	h.LogMedian = selectValue(once, (len(once)-1)/2)
 }
 
 // EffectiveDegree is (sum w)^2 / sum w^2 for weights given by their logarithms, between 1 and len(logs); NaN for none.

@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"math"
 	"math/bits"
-	"slices"
 	"sync/atomic"
 
 	"pinfill/internal/neighbors"
@@ -20,7 +19,7 @@ type lists struct {
 }
 
 // symmetrise joins j to i where j is among the first k of i's list or i among the first k of j's. An edge found from
-// both sides takes the smaller of the two distances, which differ by rounding at most.
+// both sides has the same distance in both lists, to the last bit, as package neighbors promises.
 //
 // Row i of the answer holds its own list and the vertices that list i one-sidedly. One pass marks the one-sided
 // entries, a bit each, and counts them at their far end; a second fills the rows, and sorting each row by column
@@ -29,18 +28,14 @@ func symmetrise(l lists, k, workers int) *sparse.CSR {
 	words := (k + 63) / 64
 	oneSided := make([]uint64, l.n*words)
 	extra := make([]int32, l.n) // one-sided arrivals of each row; counted down while filling
-	var uneven atomic.Bool      // some pair has two distances
 	parallel.For(workers, l.n, rowGrain, func(lo, hi int) {
 		for i := lo; i < hi; i++ {
 			own := l.index[i*l.stride : i*l.stride+k]
 			mask := oneSided[i*words : (i+1)*words]
 			for t, j := range own {
-				back := rankOf(l, int(j), k, int32(i))
-				if back < 0 {
+				if !l.holds(int(j), k, int32(i)) {
 					mask[t>>6] |= 1 << (t & 63)
 					atomic.AddInt32(&extra[j], 1)
-				} else if l.dist[int(j)*l.stride+back] != l.dist[i*l.stride+t] {
-					uneven.Store(true)
 				}
 			}
 		}
@@ -73,35 +68,17 @@ func symmetrise(l lists, k, workers int) *sparse.CSR {
 			sparse.SortRow(a.Row(i))
 		}
 	})
-	if uneven.Load() {
-		level(a, workers)
-	}
 	return a
 }
 
-// level gives both entries of each edge the smaller of their values.
-func level(a *sparse.CSR, workers int) {
-	val := make([]float64, len(a.Val))
-	parallel.For(workers, a.N, rowGrain, func(lo, hi int) {
-		for i := lo; i < hi; i++ {
-			for t := a.RowPtr[i]; t < a.RowPtr[i+1]; t++ {
-				j := a.Col[t]
-				back, _ := slices.BinarySearch(a.Col[a.RowPtr[j]:a.RowPtr[j+1]], int32(i))
-				val[t] = min(a.Val[t], a.Val[a.RowPtr[j]+back])
-			}
-		}
-	})
-	a.Val = val
-}
-
-// rankOf gives the place of vertex i in the first k of j's list, or -1.
-func rankOf(l lists, j, k int, i int32) int {
-	for t, v := range l.index[j*l.stride : j*l.stride+k] {
+// holds says whether i is among the first k of j's list.
+func (l lists) holds(j, k int, i int32) bool {
+	for _, v := range l.index[j*l.stride : j*l.stride+k] {
 		if v == i {
-			return t
+			return true
 		}
 	}
-	return -1
+	return false
 }
 
 // localScales gives each vertex's distance to its neighbour of the given rank.

@@ -79,7 +79,7 @@ func logSpaced(lo, hi float64, count int) []float64 {
 	return v
 }
 
-// median is the middle of the values that are numbers, the lower one of two; NaN if there are none.
+// median is the lower middle of the values that are numbers; NaN if there are none.
 func median(v []float64) float64 {
 	s := make([]float64, 0, len(v))
 	for _, x := range v {
@@ -90,6 +90,41 @@ func median(v []float64) float64 {
 	if len(s) == 0 {
 		return math.NaN()
 	}
-	slices.Sort(s)
-	return s[(len(s)-1)/2]
+	return selectValue(s, (len(s)-1)/2)
+}
+
+// selectValue gives what would stand at place k if v, numbers, were sorted, and reorders v: Hoare's selection (1961),
+// with a sort for what is left after so many rounds that the pivots must be bad.
+func selectValue(v []float64, k int) float64 {
+	for range 50 {
+		if len(v) < 64 {
+			break
+		}
+		a, b, c := v[0], v[len(v)/2], v[len(v)-1]
+		pivot := max(min(a, b), min(max(a, b), c))
+		i, j := 0, len(v)-1
+		for i <= j {
+			for v[i] < pivot {
+				i++
+			}
+			for v[j] > pivot {
+				j--
+			}
+			if i <= j {
+				v[i], v[j] = v[j], v[i]
+				i++
+				j--
+			}
+		}
+		switch {
+		case k <= j:
+			v = v[:j+1]
+		case k >= i:
+			v, k = v[i:], k-i
+		default:
+			return pivot
+		}
+	}
+	slices.Sort(v)
+	return v[k]
 }

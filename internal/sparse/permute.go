@@ -40,26 +40,33 @@ func Inverse(order []int32) []int32 {
 	return place
 }
 
-// insertionLimit is the longest row sorted by insertion; neighbour graphs have rows of 5 to 50 entries.
-const insertionLimit = 32
+// shortRow is the longest row sorted by insertion; neighbour graphs have rows of 5 to 50 entries.
+const shortRow = 32
 
-// SortRow sorts the columns of a row, which are distinct, and their values with them.
+// SortRow sorts the columns of a row, 0 or above, and their values with them; equal columns keep their order.
+//
+// What is sorted is the pair (column, place) packed into one word; the values move once, at the end.
 func SortRow(col []int32, val []float64) {
-	if len(col) > insertionLimit {
+	if len(col) > shortRow {
 		sortLongRow(col, val)
 		return
 	}
-	for i := 1; i < len(col); i++ {
-		c, v := col[i], val[i]
-		j := i
-		for ; j > 0 && col[j-1] > c; j-- {
-			col[j], val[j] = col[j-1], val[j-1]
+	var key [shortRow]uint64
+	var old [shortRow]float64
+	copy(old[:], val)
+	for t, c := range col {
+		k := uint64(c)<<32 | uint64(t)
+		j := t
+		for ; j > 0 && key[j-1] > k; j-- {
+			key[j] = key[j-1]
 		}
-		col[j], val[j] = c, v
+		key[j] = k
+	}
+	for t, k := range key[:len(col)] {
+		col[t], val[t] = int32(k>>32), old[k%shortRow]
 	}
 }
 
-// sortLongRow sorts (column, old position) pairs packed into one word each, then moves the values.
 func sortLongRow(col []int32, val []float64) {
 	key := make([]uint64, len(col))
 	for t, c := range col {
