@@ -121,4 +121,3 @@ func highest(v []float64) float64 {
 	}
 	return m
 }
-
