@@ -89,7 +89,7 @@ func (b *blocks) batch() *batch {
 
 // others finds the nearest of the points at up to bucketSize places, each without the point itself, writing to
 // close[q] and index[q] the closeness and place of those of places[q].
-func (w *batch) others(places []int, close [][]float64, index [][]int32) {
+func (w *batch) others(ctx context.Context, places []int, close [][]float64, index [][]int32) {
 	t, d, m := w.b.t, w.b.t.pts.D, len(places)
 	w.places = places
 	for q, i := range places {
@@ -110,7 +110,7 @@ func (w *batch) others(places []int, close [][]float64, index [][]int32) {
 	}
 	home := t.nodeOf(places[0], w.b.level)
 	w.scan(home)
-	w.descend(1, home+1<<w.b.level)
+	w.descend(ctx, 1, home+1<<w.b.level)
 }
 
 // worst is the largest closeness that can still change an answer.
@@ -122,9 +122,10 @@ func (w *batch) worst() float64 {
 	return worst
 }
 
-// descend visits the buckets below node v, nearer ones first, but for node home, which is done.
-func (w *batch) descend(v, home int) {
-	if v == home || w.gap(v) > w.worst() {
+// descend visits the buckets below node v, nearer ones first, but for node home, which is done. It stops early when ctx
+// ends: the answers are then worthless.
+func (w *batch) descend(ctx context.Context, v, home int) {
+	if v == home || w.gap(v) > w.worst() || ctx.Err() != nil {
 		return
 	}
 	if first := 1 << w.b.level; v >= first {
@@ -135,8 +136,8 @@ func (w *batch) descend(v, home int) {
 	if w.gap(far) < w.gap(near) {
 		near, far = far, near
 	}
-	w.descend(near, home)
-	w.descend(far, home)
+	w.descend(ctx, near, home)
+	w.descend(ctx, far, home)
 }
 
 // gap is a lower bound on the closeness of any query to any point of node v.
@@ -202,7 +203,7 @@ func (b *blocks) all(ctx context.Context, k int, o Options) (*Lists, Report, err
 			places = append(places, i)
 			close, index = append(close, out.Dist[row*k:(row+1)*k]), append(index, out.Index[row*k:(row+1)*k])
 		}
-		works[worker].others(places, close, index)
+		works[worker].others(ctx, places, close, index)
 		for _, x := range index {
 			b.t.rename(x)
 		}

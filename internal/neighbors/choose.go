@@ -31,7 +31,7 @@ const (
 
 // plan tries the tree on a few points, and blocks on a few buckets where the tree had to look at a good part of all
 // points, and takes what costs less.
-func (t *tree) plan(k int, o Options) plan {
+func (t *tree) plan(ctx context.Context, k int, o Options) plan {
 	n, d := t.pts.N, t.pts.D
 	places := sample(n, probePoints, o.Seed)
 	finders := make([]*finder, len(places))
@@ -59,7 +59,7 @@ func (t *tree) plan(k int, o Options) plan {
 		for place := lo; place < hi; place++ {
 			bucket, close, index = append(bucket, place), append(close, make([]float64, k)), append(index, make([]int32, k))
 		}
-		works[i].others(bucket, close, index)
+		works[i].others(ctx, bucket, close, index)
 	})
 	var pairs, queries float64
 	for _, w := range works {
@@ -178,7 +178,7 @@ func (t *tree) kthCloseness(ctx context.Context, places []int, k int, o Options)
 				for q := lo; q < hi; q++ {
 					c, x = append(c, close[q*k:(q+1)*k]), append(x, index[q*k:(q+1)*k])
 				}
-				w.others(places[lo:hi], c, x)
+				w.others(ctx, places[lo:hi], c, x)
 				counts[lo] = w.distances
 			}
 		})

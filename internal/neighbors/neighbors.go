@@ -98,7 +98,7 @@ func KNearest(ctx context.Context, pts *points.Matrix, k int, o Options) (*Lists
 	if o.Search == Approximate && pts.N >= fewPoints {
 		return t.approximate(ctx, k, o)
 	}
-	p := t.plan(k, o)
+	p := t.plan(ctx, k, o)
 	switch {
 	case o.Search == Auto && p.work > AutoLimit:
 		return t.approximate(ctx, k, o)

@@ -25,7 +25,10 @@ func newTree(ctx context.Context, pts *points.Matrix, o Options) (*tree, error) 
 	if !t.ordered() {
 		t.pts = points.NewMatrix(pts.N, pts.D)
 		copy(t.pts.Data, pts.Data)
-		t.id = points.Order(t.pts, o.Workers)
+		var err error
+		if t.id, err = points.Order(ctx, t.pts, o.Workers); err != nil {
+			return nil, err
+		}
 		t.boxes(o.Workers)
 	}
 	return t, ctx.Err()

@@ -1,6 +1,7 @@
 package points
 
 import (
+	"context"
 	"math/bits"
 	"slices"
 	"sync"
@@ -27,22 +28,24 @@ func Bound(n, level, i int) int { return int(uint64(n) * uint64(i) >> level) }
 // bounds may be others: equal rows stand side by side.
 //
 // Cost O(n log n) with no memory beside the answer; an order that is right already is found right in one pass a level.
-func Order(m *Matrix, workers int) []int32 {
+// The context's error is the only one; the rows are then in no particular order.
+func Order(ctx context.Context, m *Matrix, workers int) ([]int32, error) {
 	perm := make([]int32, m.N)
 	for i := range perm {
 		perm[i] = int32(i)
 	}
-	o := orderer{m: m, perm: perm, levels: Levels(m.N), spare: make(chan struct{}, max(workers, 1))}
+	o := orderer{ctx: ctx, m: m, perm: perm, levels: Levels(m.N), spare: make(chan struct{}, max(workers, 1))}
 	for range max(workers, 1) - 1 {
 		o.spare <- struct{}{}
 	}
 	o.cut(0, m.N, 0, 0)
 	o.wg.Wait()
-	return perm
+	return perm, ctx.Err()
 }
 
 // orderer sorts rows of m, and perm along with them.
 type orderer struct {
+	ctx    context.Context
 	m      *Matrix
 	perm   []int32
 	levels int
@@ -54,7 +57,7 @@ type orderer struct {
 func (o *orderer) cut(lo, hi, level, i int) {
 	for hi-lo > 1 {
 		axis, width := o.widest(lo, hi)
-		if width == 0 {
+		if width == 0 || (hi-lo > 1<<14 && o.ctx.Err() != nil) {
 			return
 		}
 		if level >= o.levels && hi-lo <= Leaf {

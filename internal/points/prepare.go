@@ -92,11 +92,13 @@ func Prepare(ctx context.Context, raw *Matrix, o Options) (*Space, error) {
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
-	s.collapse(workers)
+	if err := s.collapse(ctx, workers); err != nil {
+		return nil, err
+	}
 	if s.Points.N < 2 {
 		return nil, ErrIdentical
 	}
-	return s, ctx.Err()
+	return s, nil
 }
 
 // choose sets Scaling, Constant and the shares.
@@ -187,10 +189,13 @@ func (s *Space) place(raw *Matrix, workers int) error {
 }
 
 // collapse orders Points, makes equal ones one, and sets Vertex and Count.
-func (s *Space) collapse(workers int) {
+func (s *Space) collapse(ctx context.Context, workers int) error {
 	m := s.Points
 	rows := m.N
-	perm := Order(m, workers)
+	perm, err := Order(ctx, m, workers)
+	if err != nil {
+		return err
+	}
 	s.Vertex = make([]int32, rows)
 	v := 0
 	for i := range rows {
@@ -204,7 +209,9 @@ func (s *Space) collapse(workers int) {
 		kept := NewMatrix(v+1, m.D)
 		copy(kept.Data, m.Data)
 		s.Points = kept
-		perm = Order(kept, workers)
+		if perm, err = Order(ctx, kept, workers); err != nil {
+			return err
+		}
 		place := make([]int32, kept.N)
 		for i, p := range perm {
 			place[p] = int32(i)
@@ -217,4 +224,5 @@ func (s *Space) collapse(workers int) {
 	for _, p := range s.Vertex {
 		s.Count[p]++
 	}
+	return nil
 }

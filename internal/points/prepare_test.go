@@ -226,7 +226,10 @@ func TestOrderIsATree(t *testing.T) {
 		n, d := 1+r.IntN(3000), 1+r.IntN(4)
 		m := random(r, n, d, func(i, j int) float64 { return float64(r.IntN(1000*(1+trial%2))) + float64(i*min(d-1, 1)-j*j)/4096 })
 		before := slices.Clone(m.Data)
-		perm := Order(m, 2)
+		perm, err := Order(context.Background(), m, 2)
+		if err != nil {
+			t.Fatal(err)
+		}
 		for i, p := range perm {
 			if !slices.Equal(m.Row(i), before[int(p)*d:int(p+1)*d]) {
 				t.Fatal("rows and permutation disagree")
