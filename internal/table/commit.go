@@ -82,7 +82,7 @@ func (o *Outputs) settle() error {
 // place renames the temporary files. Where more than one has to move, the old files are kept by a hard link until all
 // are in place.
 func (o *Outputs) place(files []*Output) error {
-	files = slices.DeleteFunc(files, func(f *Output) bool { return f.temp == "" })
+	files = slices.DeleteFunc(slices.Clone(files), func(f *Output) bool { return f.temp == "" }) // the caller keeps its own
 	kept := make([]string, len(files))
 	defer func() {
 		for _, k := range kept {
