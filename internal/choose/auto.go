@@ -1,0 +1,200 @@
+package choose
+
+import (
+	"context"
+	"fmt"
+	"math"
+
+	"pinfill/internal/solve"
+)
+
+// Options steer Auto and Sweep. The zero value means the defaults.
+type Options struct {
+	Energy    solve.Energy
+	Tolerance float64 // of the solves; 0 means the solver's
+	Workers   int     // 0 means GOMAXPROCS; answers do not depend on it
+	Seed      uint64  // of the folds
+	Progress  func(share float64)
+	// Scores asks for left-out scores even where there is nothing to choose.
+	Scores bool
+}
+
+// Decision is what Auto chose.
+type Decision struct {
+	Setting
+	Chosen   *Score   // the score of Setting, its Fields a solution ready to use
+	Scores   []*Score // every setting tried, in order
+	Reason   string   // one sentence
+	Warnings []string // what a user should know or change
+}
+
+const (
+	foldCount = 5
+	// fewLabels: with fewer labels in a class, leaving one out says next to nothing of how a setting does with all.
+	fewLabels = 3
+	// enoughNumbers is the same for numbers.
+	enoughNumbers = 10
+)
+
+// Auto chooses the setting. The first setting of Asked, or the study's default, stands unless leave-out shows another
+// to be better by more than one standard error of the paired difference; where labels are too few to say, or a
+// setting cannot be certified, the next one that can stands instead. The cost is that of a few solves: one for each
+// setting tried and, but for p = 2, the folds, warm from it.
+//
+// The error is the source's, the solver's, or says that the labels do not fit the graph.
+func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*Decision, error) {
+	all := a.settings(l.Task)
+	d := &Decision{}
+	speak, why := speaking(l)
+	var fold []int32
+	if speak && (len(all) > 1 || o.Scores) {
+		fold = FoldsOf(l, foldCount, o.Seed)
+	}
+	fixed := len(all) == 1
+	if fold == nil && !o.Scores {
+		if len(a.P) == 0 && len(all) == len(classPs) {
+			all = all[:2] // the default, and p = 2 to fall back on
+		}
+	}
+	t := trial{energy: o.Energy, labels: l, fold: fold, solve: solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers}, measure: true}
+	for i, s := range all {
+		if fold == nil && len(d.Scores) > 0 && d.Scores[0].Certified {
+			break // nothing to compare: the first that holds stands
+		}
+		if t.graph == nil || !s.sameGraph(all[i-1]) {
+			var err error
+			if t.graph, err = source(ctx, s); err != nil {
+				return nil, err
+			}
+		}
+		if err := l.Validate(t.graph.N); err != nil {
+			return nil, err
+		}
+		sc, err := t.score(ctx, s, nil)
+		if err != nil {
+			return nil, err
+		}
+		d.Scores = append(d.Scores, sc)
+		if o.Progress != nil {
+			o.Progress(float64(i+1) / float64(len(all)))
+		}
+	}
+	d.settle(l, all, fold != nil, fixed, why)
+	return d, nil
+}
+
+// speaking says whether there are labels enough to leave some out, or why not.
+func speaking(l Labels) (bool, string) {
+	units := map[int32]bool{}
+	for k := range l.Vertex {
+		if l.Group != nil {
+			units[l.Group[k]] = true
+		} else {
+			units[int32(k)] = true
+		}
+	}
+	if l.Task == Numbers {
+		if len(units) < enoughNumbers {
+			return false, fmt.Sprintf("%d labels (or groups) are too few to leave some out", len(units))
+		}
+		return true, ""
+	}
+	present, thin := 0, 0
+	for _, n := range l.PerClass() {
+		if n > 0 {
+			present++
+		}
+		if n > 0 && n < fewLabels {
+			thin++
+		}
+	}
+	switch {
+	case present < 2:
+		return false, "there is one class"
+	case 2*thin > present || len(units) < 2*present:
+		return false, fmt.Sprintf("most classes have fewer than %d labels (or groups), too few to leave some out", fewLabels)
+	}
+	return true, ""
+}
+
+// settle picks among the scores.
+func (d *Decision) settle(l Labels, all []Setting, compared, fixed bool, why string) {
+	best := -1
+	for i, s := range d.Scores {
+		if s.Certified {
+			best = i
+			break
+		}
+	}
+	skipped := best != 0
+	if best < 0 {
+		best = 0
+	}
+	first := best
+	var gain float64
+	if compared {
+		for i, s := range d.Scores {
+			if i == first || !s.Certified {
+				continue
+			}
+			g, e := paired(d.Scores[first].loss, s.loss)
+			if g > e && g > gain {
+				best, gain = i, g
+			}
+		}
+	}
+	c := d.Scores[best]
+	c.Advised = true
+	d.Setting, d.Chosen = c.Setting, c
+	name := c.describe(all)
+	unit := "left-out error"
+	if l.Task == Numbers {
+		unit = "left-out RMSE"
+	}
+	switch {
+	case fixed:
+		d.Reason = name + ": as asked"
+	case best != first:
+		d.Reason = fmt.Sprintf("%s: its %s is %.3g against %.3g of %s, more than the noise of %d labels",
+			name, unit, c.Error, d.Scores[first].Error, d.Scores[first].describe(all), c.LeftOut)
+	case compared:
+		d.Reason = fmt.Sprintf("%s: the default for %s; no other setting tried has a %s better than %.3g by more than the noise of %d labels",
+			name, taskText(l.Task), unit, c.Error, c.LeftOut)
+	default:
+		d.Reason = fmt.Sprintf("%s: the default for %s; %s", name, taskText(l.Task), why)
+	}
+	if skipped && !fixed && d.Scores[0] != c {
+		d.Warnings = append(d.Warnings, fmt.Sprintf("%s could not be certified on this graph and was passed over", d.Scores[0].describe(all)))
+	}
+	d.warn(l)
+}
+
+// paired gives the mean of a less b over the labels that both answer, and its standard error.
+func paired(a, b []float64) (gain, stdError float64) {
+	var diff []float64
+	for k := range a {
+		if !math.IsNaN(a[k]) && !math.IsNaN(b[k]) {
+			diff = append(diff, a[k]-b[k])
+		}
+	}
+	if len(diff) < 2 {
+		return 0, math.Inf(1)
+	}
+	m := mean(diff)
+	var v float64
+	for _, x := range diff {
+		v += (x - m) * (x - m)
+	}
+	n := float64(len(diff))
+	return m, math.Sqrt(v / (n - 1) / n)
+}
+
+func taskText(t Task) string {
+	if t == Numbers {
+		return "numbers"
+	}
+	return "classes"
+}
+
+// warn adds the degeneracy warnings for the chosen setting.
+func (d *Decision) warn(l Labels) {}
