@@ -2,7 +2,6 @@ package laplace
 
 import (
 	"math"
-	"slices"
 
 	"pinfill/internal/parallel"
 )
@@ -111,7 +110,7 @@ func (s *System) fill(pattern bool) error {
 		}
 	})
 	if pattern || zeros {
-		if i := s.ungrounded(); i >= 0 {
+		if i := a.ungrounded(); i >= 0 {
 			return &UngroundedError{Vertex: int(s.free[i])}
 		}
 	}
@@ -151,33 +150,6 @@ func (s *System) layout() {
 	a.col, a.w = make([]int32, nnz), make([]float64, nnz)
 	a.excess, a.diag = make([]float64, a.n), make([]float64, a.n)
 	a.edgeFix, a.edgeW = make([]int32, edges), make([]float64, edges)
-}
-
-// ungrounded gives a free row from which no positive conductances lead to a fixed vertex, the smallest, or -1. On the
-// way it counts the depth of the network.
-func (s *System) ungrounded() int {
-	a := &s.a
-	seen := make([]bool, a.n)
-	var front, next []int32
-	for i := range a.n {
-		if a.excess[i] > 0 {
-			seen[i] = true
-			front = append(front, int32(i))
-		}
-	}
-	for s.depth = 0; len(front) > 0; s.depth++ {
-		next = next[:0]
-		for _, i := range front {
-			for k := a.ptr[i]; k < a.ptr[i+1]; k++ {
-				if j := a.col[k]; !seen[j] && a.w[k] > 0 {
-					seen[j] = true
-					next = append(next, j)
-				}
-			}
-		}
-		front, next = next, front
-	}
-	return slices.Index(seen, false)
 }
 
 // inject sets b_i = sum over fixed neighbours of e_ij t_j, the right-hand side for values t at the fixed vertices.

@@ -64,16 +64,10 @@ func (h *hierarchy) invert(a *sddm) {
 	if a.n > 8*coarsest {
 		return
 	}
-	f := newDense(a)
-	h.inverse = make([]float32, a.n*a.n)
-	b, x := make([]float64, a.n), make([]float64, a.n)
-	for j := range a.n {
-		clear(b)
-		b[j] = a.diag[j]
-		f.solve(b, x)
-		for i, v := range x {
-			h.inverse[i*a.n+j] = float32(math.Min(v, largestShare))
-		}
+	inverse := denseInverse(a)
+	h.inverse = make([]float32, len(inverse))
+	for k, v := range inverse {
+		h.inverse[k] = float32(math.Min(v, largestShare))
 	}
 }
 

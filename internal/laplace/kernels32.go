@@ -2,81 +2,65 @@ package laplace
 
 import "unsafe"
 
-// The two products below take nearly all the time of a cycle. They read without bounds checks: columns were checked
-// against n when the level was made.
-
-// apply sets y = A' x for rows lo..hi-1, x and y holding width interleaved vectors.
+// apply sets y = A' x for rows lo..hi-1, x and y holding width interleaved vectors. It takes nearly all the time of a
+// cycle, so the rows are handed to a kernel that reads without bounds checks: columns were checked when the network
+// was made. A kernel adds entry k of each quad into its k-th sum and the four sums as (0+1)+(2+3), the same for one
+// vector and for four, in assembly and in Go: a vector's answer depends on neither its company nor the processor.
 func (l *level) apply(width int, x, y []float32, lo, hi int) {
+	if lo >= hi {
+		return
+	}
+	quads := unsafe.SliceData(l.quads[l.start[lo]:])
 	if width == 1 {
-		l.apply1(x, y, lo, hi)
+		rows1(quads, &l.start[lo], &l.tie[lo], unsafe.SliceData(x), &x[lo], &y[lo], hi-lo)
 	} else {
-		l.apply4(x, y, lo, hi)
+		rows4(quads, &l.start[lo], &l.tie[lo], unsafe.SliceData(x), &x[4*lo], &y[4*lo], hi-lo)
 	}
 }
 
-func (l *level) apply1(x, y []float32, lo, hi int) {
-	xp := unsafe.Pointer(unsafe.SliceData(x))
-	quads := unsafe.Pointer(unsafe.SliceData(l.quads))
-	start, tie := l.start[lo:hi+1], l.tie[lo:hi]
-	y = y[lo:hi]
-	k := int(start[0])
-	for i := range tie {
-		xi := *(*float32)(unsafe.Add(xp, (lo+i)*4))
-		var s, t float32
-		for end := int(start[i+1]); k < end; k++ {
-			e := (*quad)(unsafe.Add(quads, k*int(unsafe.Sizeof(quad{}))))
-			s += float32(e.w[0] * (xi - *(*float32)(unsafe.Add(xp, int(e.col[0])*4))))
-			t += float32(e.w[1] * (xi - *(*float32)(unsafe.Add(xp, int(e.col[1])*4))))
-			s += float32(e.w[2] * (xi - *(*float32)(unsafe.Add(xp, int(e.col[2])*4))))
-			t += float32(e.w[3] * (xi - *(*float32)(unsafe.Add(xp, int(e.col[3])*4))))
+// at is p[i].
+func at[T any](p *T, i int) *T {
+	return (*T)(unsafe.Add(unsafe.Pointer(p), i*int(unsafe.Sizeof(*p))))
+}
+
+// rows1Go applies rows of a level: quads and start belong to the first row, own is x at the first row, y its answer.
+func rows1Go(quads *quad, start *int32, tie, x, own, y *float32, rows int) {
+	k := 0
+	for i := range rows {
+		xi := *at(own, i)
+		var s0, s1, s2, s3 float32
+		for end := k + int(*at(start, i+1)-*at(start, i)); k < end; k++ {
+			e := at(quads, k)
+			s0 += float32(e.w[0] * (xi - *at(x, int(e.col[0]))))
+			s1 += float32(e.w[1] * (xi - *at(x, int(e.col[1]))))
+			s2 += float32(e.w[2] * (xi - *at(x, int(e.col[2]))))
+			s3 += float32(e.w[3] * (xi - *at(x, int(e.col[3]))))
 		}
-		y[i] = float32(tie[i]*xi) + (s + t)
+		*at(y, i) = float32(*at(tie, i)*xi) + ((s0 + s1) + (s2 + s3))
 	}
 }
 
-// apply4 sums each of the four vectors in the order of apply1, so that a vector's answer does not depend on company.
-func (l *level) apply4(x, y []float32, lo, hi int) {
-	xp := unsafe.Pointer(unsafe.SliceData(x))
-	quads := unsafe.Pointer(unsafe.SliceData(l.quads))
-	start, tie := l.start[lo:hi+1], l.tie[lo:hi]
-	y = y[4*lo : 4*hi]
-	k := int(start[0])
-	for i := range tie {
-		v := (*[4]float32)(unsafe.Add(xp, (lo+i)*16))
-		x0, x1, x2, x3 := v[0], v[1], v[2], v[3]
-		var s0, s1, s2, s3, t0, t1, t2, t3 float32
-		for end := int(start[i+1]); k < end; k++ {
-			e := (*quad)(unsafe.Add(quads, k*int(unsafe.Sizeof(quad{}))))
-			w := e.w[0]
-			v := (*[4]float32)(unsafe.Add(xp, int(e.col[0])*16))
-			s0 += float32(w * (x0 - v[0]))
-			s1 += float32(w * (x1 - v[1]))
-			s2 += float32(w * (x2 - v[2]))
-			s3 += float32(w * (x3 - v[3]))
-			w = e.w[1]
-			v = (*[4]float32)(unsafe.Add(xp, int(e.col[1])*16))
-			t0 += float32(w * (x0 - v[0]))
-			t1 += float32(w * (x1 - v[1]))
-			t2 += float32(w * (x2 - v[2]))
-			t3 += float32(w * (x3 - v[3]))
-			w = e.w[2]
-			v = (*[4]float32)(unsafe.Add(xp, int(e.col[2])*16))
-			s0 += float32(w * (x0 - v[0]))
-			s1 += float32(w * (x1 - v[1]))
-			s2 += float32(w * (x2 - v[2]))
-			s3 += float32(w * (x3 - v[3]))
-			w = e.w[3]
-			v = (*[4]float32)(unsafe.Add(xp, int(e.col[3])*16))
-			t0 += float32(w * (x0 - v[0]))
-			t1 += float32(w * (x1 - v[1]))
-			t2 += float32(w * (x2 - v[2]))
-			t3 += float32(w * (x3 - v[3]))
+// rows4Go is rows1Go for four interleaved vectors.
+func rows4Go(quads *quad, start *int32, tie, x, own, y *float32, rows int) {
+	k := 0
+	for i := range rows {
+		v := *(*[4]float32)(unsafe.Pointer(at(own, 4*i)))
+		var s [4][4]float32 // by entry of the quad, by vector
+		for end := k + int(*at(start, i+1)-*at(start, i)); k < end; k++ {
+			e := at(quads, k)
+			for q, w := range e.w {
+				u := (*[4]float32)(unsafe.Pointer(at(x, 4*int(e.col[q]))))
+				s[q][0] += float32(w * (v[0] - u[0]))
+				s[q][1] += float32(w * (v[1] - u[1]))
+				s[q][2] += float32(w * (v[2] - u[2]))
+				s[q][3] += float32(w * (v[3] - u[3]))
+			}
 		}
-		to := (*[4]float32)(y[4*i:])
-		to[0] = float32(tie[i]*x0) + (s0 + t0)
-		to[1] = float32(tie[i]*x1) + (s1 + t1)
-		to[2] = float32(tie[i]*x2) + (s2 + t2)
-		to[3] = float32(tie[i]*x3) + (s3 + t3)
+		to := (*[4]float32)(unsafe.Pointer(at(y, 4*i)))
+		t := *at(tie, i)
+		for c := range to {
+			to[c] = float32(t*v[c]) + ((s[0][c] + s[1][c]) + (s[2][c] + s[3][c]))
+		}
 	}
 }
 
@@ -94,19 +78,19 @@ func (l *level) restrict(width int, r, to []float32, lo, hi int) {
 	first := l.m.ptr[lo]
 	for g := lo; g < hi; g++ {
 		last := l.m.ptr[g+1]
-		list := l.m.list[first:last]
+		list, share := l.m.list[first:last], l.share[first:last]
 		first = last
 		if width == 1 {
 			var s float32
-			for _, i := range list {
-				s += float32(l.share[i] * r[i])
+			for k, i := range list {
+				s += float32(share[k] * r[i])
 			}
 			to[g] = s
 			continue
 		}
 		var s0, s1, s2, s3 float32
-		for _, i := range list {
-			w, v := l.share[i], (*[4]float32)(r[4*int(i):])
+		for k, i := range list {
+			w, v := share[k], (*[4]float32)(r[4*int(i):])
 			s0 += float32(w * v[0])
 			s1 += float32(w * v[1])
 			s2 += float32(w * v[2])

@@ -27,7 +27,7 @@ type level struct {
 
 	agg   []int32 // to the next level; nil on the coarsest
 	m     members
-	share []float32
+	share []float32 // in the order of m.list
 
 	work [6][]float32 // vectors of the cycle, interleaved by right-hand side
 }
@@ -65,15 +65,15 @@ func (l *level) set(a *sddm, workers int) {
 	})
 }
 
-// setShares sets share from the coarse diagonal.
+// setShares sets share, in the order of m.list, from the coarse diagonal.
 func (l *level) setShares(coarse *sddm, workers int) {
 	if l.share == nil {
-		l.share = make([]float32, l.n)
+		l.share = make([]float32, len(l.m.list))
 	}
-	parallel.For(workers, l.n, sumChunk, func(lo, hi int) {
-		for i := lo; i < hi; i++ {
-			if g := l.agg[i]; g >= 0 {
-				l.share[i] = float32(math.Min(l.d[i]/coarse.diag[g], largestShare))
+	parallel.For(workers, coarse.n, coarseChunk, func(lo, hi int) {
+		for g := lo; g < hi; g++ {
+			for k := l.m.ptr[g]; k < l.m.ptr[g+1]; k++ {
+				l.share[k] = float32(math.Min(l.d[l.m.list[k]]/coarse.diag[g], largestShare))
 			}
 		}
 	})

@@ -5,24 +5,31 @@ import (
 	"math"
 )
 
+// The costs by which Auto chooses, in units of one multiplication and addition with an entry of A.
 const (
-	directAlways = 300 // free vertices up to which a system is factorised at once
-	deepNetwork  = 8   // edges from the ground beyond which Jacobi is not tried: it needs more iterations than that
+	jacobiStep    = 1.3 // an iteration of Jacobi, per entry
+	multigridCost = 90  // a multigrid solve with its set-up, per entry
+	iterateCost   = 70  // a right-hand side by whichever iteration, per entry: for the choice of elimination
+	smallChange   = 2e5 // work too small to weigh
 
-	// In units of one product with A: an iteration of Jacobi, and what a multigrid solve takes with its set-up.
-	jacobiStep    = 1.3
-	multigridCost = 90
+	planAlways   = 2000    // rows up to which elimination is planned for a single right-hand side
+	planMany     = 30_000  // and for many
+	planRescue   = 300_000 // and where nothing else has converged
+	manyColumns  = 4
+	rescueWork   = 1e10
+	rescueFactor = 1 << 28 // entries
 )
 
 // engines are what a system has built so far and what it has learnt of itself.
 type engines struct {
-	factor *denseFactor
-	grid   *hierarchy
-	stale  bool   // the conductances have changed since grid was filled
-	first  int    // iterations of the first solve on the grid's aggregates
-	latest int    // of the latest
-	choice Method // what Auto has settled on, or Auto
-	depth  int    // edges from the ground to the farthest free vertex
+	plan    *plan
+	planned int // most entries the factor was allowed when a plan was last sought; 0: never sought
+	factor  *factor
+	grid    *hierarchy
+	stale   bool   // the conductances have changed since grid was filled
+	first   int    // iterations of the first solve on the grid's aggregates
+	latest  int    // of the latest
+	choice  Method // the iteration that Auto has settled on, or Auto
 }
 
 func (e *engines) reweighted() {
@@ -48,6 +55,7 @@ func (s *System) hierarchy() *hierarchy {
 func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error) {
 	total := Stats{Method: s.options.Method, Converged: true}
 	var wide, single *block
+	rhs := len(jobs)
 	for len(jobs) > 0 {
 		if err := ctx.Err(); err != nil {
 			return total, err
@@ -80,7 +88,7 @@ func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error
 			}
 			k.unit[c] = j.unit
 		}
-		st, err := s.solveBlock(ctx, k, len(now), tol)
+		st, err := s.solveBlock(ctx, k, len(now), rhs, tol)
 		if err != nil {
 			return total, err
 		}
@@ -95,33 +103,39 @@ func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error
 	return total, nil
 }
 
-// solveBlock solves the first used columns of k.
-func (s *System) solveBlock(ctx context.Context, k *block, used int, tol float64) (Stats, error) {
+// solveBlock solves the first used columns of k, of rhs right-hand sides in all.
+func (s *System) solveBlock(ctx context.Context, k *block, used, rhs int, tol float64) (Stats, error) {
 	method := s.options.Method
-	if method == Auto {
-		method = s.choice
-	}
 	var before [maxWidth]int // iterations spent on methods that were given up
 	if method == Auto {
+		cheap, err := s.eliminationPays(ctx, rhs)
+		if err != nil {
+			return Stats{}, err
+		}
+		method = s.choice
 		switch {
-		case s.a.n <= directAlways:
+		case cheap:
 			method = Direct
-		case s.depth > deepNetwork:
-			method = Multigrid
-		default:
+		case method == Auto && s.a.deep():
+			method, s.choice = Multigrid, Multigrid
+		case method == Auto || method == Jacobi:
 			columns, done, err := pcg(ctx, k, tol, jacobi{}, tooSlow)
 			if err != nil {
 				return Stats{}, err
 			}
 			if done {
-				return summary(columns[:used], before[:]), nil
+				s.choice = Jacobi
+				return s.rescue(ctx, k, used, tol, summary(columns[:used], before[:]))
 			}
 			for c := range before {
 				before[c] = columns[c].stats.Iterations
 			}
-			method = Multigrid
+			method, s.choice = Multigrid, Multigrid
 		}
-		s.choice = method
+	} else if method == Direct {
+		if err := s.makePlan(ctx, math.MaxInt); err != nil {
+			return Stats{}, err
+		}
 	}
 	var m preconditioner
 	switch method {
@@ -138,13 +152,65 @@ func (s *System) solveBlock(ctx context.Context, k *block, used int, tol float64
 	}
 	if method == Multigrid {
 		for _, c := range columns[:used] {
-			s.latest = max(c.stats.Iterations, 0)
+			s.latest = c.stats.Iterations
 			if s.first == 0 {
 				s.first = s.latest
 			}
 		}
 	}
-	return summary(columns[:used], before[:]), nil
+	st := summary(columns[:used], before[:])
+	if s.options.Method == Auto {
+		return s.rescue(ctx, k, used, tol, st)
+	}
+	return st, nil
+}
+
+// makePlan plans an elimination whose factor holds at most so many entries, if that can be, unless it was tried before.
+func (s *System) makePlan(ctx context.Context, most int) error {
+	if s.plan != nil || s.planned >= most {
+		return nil
+	}
+	p, err := newPlan(ctx, &s.a.sddm, most)
+	if err != nil {
+		return err
+	}
+	s.plan, s.planned = p, most
+	return nil
+}
+
+// eliminationPays says whether elimination is expected to be quicker than iterations for rhs right-hand sides.
+func (s *System) eliminationPays(ctx context.Context, rhs int) (bool, error) {
+	n, nnz := s.a.n, len(s.a.col)
+	if n > planMany || n > planAlways && rhs < manyColumns {
+		return false, nil
+	}
+	if err := s.makePlan(ctx, iterateCost/2*nnz+n); err != nil {
+		return false, err
+	}
+	if s.plan == nil {
+		return false, nil
+	}
+	work := 2 * float64(len(s.plan.row)) * float64(rhs)
+	if s.factor == nil {
+		work += s.plan.work
+	}
+	return work <= iterateCost*float64(nnz)*float64(rhs)+smallChange, nil
+}
+
+// rescue eliminates where iterations have not converged and the factor is affordable.
+func (s *System) rescue(ctx context.Context, k *block, used int, tol float64, st Stats) (Stats, error) {
+	if st.Converged || s.a.n > planRescue {
+		return st, nil
+	}
+	if err := s.makePlan(ctx, rescueFactor); err != nil {
+		return st, err
+	}
+	if s.plan == nil || s.plan.work > rescueWork {
+		return st, nil
+	}
+	better, err := s.solveDirect(ctx, k, used, tol)
+	better.Iterations += st.Iterations
+	return better, err
 }
 
 func summary(columns []column, before []int) Stats {

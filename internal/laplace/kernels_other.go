@@ -1,0 +1,11 @@
+//go:build !amd64
+
+package laplace
+
+func rows1(quads *quad, start *int32, tie, x, own, y *float32, rows int) {
+	rows1Go(quads, start, tie, x, own, y, rows)
+}
+
+func rows4(quads *quad, start *int32, tie, x, own, y *float32, rows int) {
+	rows4Go(quads, start, tie, x, own, y, rows)
+}
