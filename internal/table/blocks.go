@@ -15,7 +15,6 @@ type cutter struct {
 	o     *Options
 	name  string
 	carry []byte // start of a row whose end was not read yet
-	line  int    // line of carry's first byte, 1-based
 	off   int64  // offset of carry's first byte in the text
 	eof   bool
 }
@@ -23,11 +22,11 @@ type cutter struct {
 // piece is text of whole rows; only the last of a file may end without a line end.
 type piece struct {
 	data []byte
-	line int
-	off  int64
+	off  int64 // offset of data[0] in the text
 }
 
-// next gives the next piece, or io.EOF. A row too long for the caps, or a quote that never closes, is refused.
+// next gives the next piece, or io.EOF. A row too long for the caps, or a quote that never closes, is refused, with
+// lines counted from the piece's own start.
 func (c *cutter) next() (piece, error) {
 	if c.eof && len(c.carry) == 0 {
 		return piece{}, io.EOF
@@ -73,8 +72,7 @@ func (c *cutter) next() (piece, error) {
 }
 
 func (c *cutter) cut(buf []byte, end int) piece {
-	p := piece{data: buf[:end:end], line: c.line, off: c.off}
-	c.line += bytes.Count(p.data, []byte{'\n'})
+	p := piece{data: buf[:end:end], off: c.off}
 	c.off += int64(end)
 	return p
 }
@@ -141,7 +139,7 @@ func (c *cutter) tooLong(buf []byte, b *boundary) error {
 		cells, last = cells+1, pos+1
 	}
 	if cells > c.o.MaxColumns {
-		return tooManyColumns(c.name, c.line, c.o.MaxColumns)
+		return tooManyColumns(c.name, 1, c.o.MaxColumns)
 	}
 	if len(buf)-last > c.o.MaxField {
 		return c.capped(buf, last, fmt.Sprintf("a cell of more than %d bytes", c.o.MaxField))
@@ -153,12 +151,12 @@ func (c *cutter) tooLong(buf []byte, b *boundary) error {
 }
 
 func (c *cutter) capped(buf []byte, at int, message string) error {
-	line, column := place(buf, at, c.line)
+	line, column := place(buf, at)
 	return &fault.Error{Exit: fault.Limit, Code: "C20", File: c.name, Line: line, Column: column, Message: message, Hint: "mend the file, or raise --max-field"}
 }
 
 func (c *cutter) unclosed(buf []byte, open int) error {
-	line, column := place(buf, open, c.line)
+	line, column := place(buf, open)
 	return &fault.Error{
 		Exit: fault.Input, Code: "C09", File: c.name, Line: line, Column: column, Message: "the quote opened here never closes",
 		Hint: "close it, or double a quote that belongs to the cell",
@@ -172,8 +170,15 @@ func tooManyColumns(name string, line, most int) error {
 	}
 }
 
-// place gives the line and the 1-based byte column of data[at], where line is that of data[0] and data[0] begins a line.
-func place(data []byte, at, line int) (int, int) {
+// place gives the line and the byte column of data[at], both from 1, where data[0] begins line 1.
+func place(data []byte, at int) (line, column int) {
 	before := data[:at]
-	return line + bytes.Count(before, []byte{'\n'}), at - bytes.LastIndexByte(before, '\n')
+	return 1 + bytes.Count(before, []byte{'\n'}), at - bytes.LastIndexByte(before, '\n')
+}
+
+// moveDown adds the lines before a piece to the position of what was refused in it.
+func moveDown(err error, lines int) {
+	if e, ok := err.(*fault.Error); ok && e != nil && e.Line > 0 {
+		e.Line += lines
+	}
 }

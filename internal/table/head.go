@@ -38,18 +38,13 @@ func (h *head) nameOf(col int) string {
 
 // readHead takes the header off the first piece of a table and checks it. What follows of the piece comes back.
 func readHead(h *head, p piece, o *Options) (piece, error) {
-	if pos, code, message, hint := checkText(p.data); pos >= 0 {
-		e := h.at(p, pos, code, fmt.Sprintf("%s (offset %d)", message, p.off+int64(pos)))
-		e.Hint = hint
-		return p, e
-	}
 	end, cells, err := h.headEnd(p)
 	if err != nil {
 		return p, err
 	}
 	line := trimEnd(p.data[:end])
 	if cells > o.MaxColumns {
-		return p, tooManyColumns(h.name, p.line, o.MaxColumns)
+		return p, tooManyColumns(h.name, 1, o.MaxColumns)
 	}
 	h.cols = cells
 	texts := make([][]byte, 0, cells)
@@ -79,9 +74,9 @@ func readHead(h *head, p piece, o *Options) (piece, error) {
 	if h.noHeader {
 		return p, nil
 	}
-	rest := piece{data: p.data[end:], line: p.line + bytes.Count(p.data[:end], []byte{'\n'}), off: p.off + int64(end)}
+	rest := piece{data: p.data[end:], off: p.off + int64(end)}
 	h.raw = p.data[:end:end]
-	return rest, h.checkNames(line, p.line, rest, o)
+	return rest, h.checkNames(line, rest, o)
 }
 
 // headEnd finds the end of the first row, which must not be blank, and counts its cells.
@@ -89,7 +84,10 @@ func (h *head) headEnd(p piece) (end, cells int, err error) {
 	s := &scanned{}
 	w := walker{h: h, p: p, s: s, hasCR: bytes.IndexByte(p.data, '\r') >= 0}
 	end, cells = w.quotedRow(0)
-	if err := s.refused.Err(); err != nil {
+	if e := h.notText(piece{p.data[:end], p.off}); e != nil {
+		return 0, 0, e
+	}
+	if s.refused.Total > 0 {
 		return 0, 0, s.refused.First[0]
 	}
 	if len(trimEnd(p.data[:end])) == 0 {
@@ -115,7 +113,7 @@ func (h *head) wrongDelimiter(line []byte) error {
 			if d == '\t' {
 				flag = `--delimiter='\t'`
 			}
-			e := h.at(piece{data: line, line: 1}, i, "C22", fmt.Sprintf("one column only, but the first line holds %q", d))
+			e := h.at(piece{data: line}, i, "C22", fmt.Sprintf("one column only, but the first line holds %q", d))
 			e.Hint = fmt.Sprintf("pass %s, or --delimiter='%c' if it is one column", flag, h.delim)
 			return e
 		}
@@ -124,9 +122,9 @@ func (h *head) wrongDelimiter(line []byte) error {
 }
 
 // checkNames refuses a header that is none, or whose names do not tell the columns apart.
-func (h *head) checkNames(line []byte, lineNo int, rest piece, o *Options) error {
+func (h *head) checkNames(line []byte, rest piece, o *Options) error {
 	place := func(col int, code, message, hint string) *fault.Error {
-		e := h.at(piece{data: line, line: lineNo}, cellStart(line, col, h.delim), code, message)
+		e := h.at(piece{data: line}, cellStart(line, col, h.delim), code, message)
 		e.Hint = hint
 		return e
 	}

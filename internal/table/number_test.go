@@ -60,7 +60,7 @@ func TestNumberTexts(t *testing.T) {
 
 // TestNumberRandom compares with strconv on the kinds of number a table holds, and on all bit patterns.
 func TestNumberRandom(t *testing.T) {
-	n := 300_000
+	n := 100_000
 	if testing.Short() {
 		n = 30_000
 	}

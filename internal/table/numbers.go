@@ -30,7 +30,7 @@ const (
 	shownEach = 5    // refusals listed for one column, so that it does not hide another; all are counted
 )
 
-// maxWhole is 2^53, up to which every whole number has a float64 of its own.
+// maxWhole is 2^53; up to it every whole number has a float64 of its own.
 const maxWhole = 1 << 53
 
 // Numbers reads the cells of cols, in that order, on all workers. A cell that is not missing and not a number is
@@ -135,7 +135,7 @@ func (p *part) rows(t *Table, n *Numbers, target []int, lo, hi int, decimal byte
 					continue
 				}
 				v, next, err := scanNumber(data, pos, sign)
-				if err == 0 && (next == end || next < end && data[next] == h.delim) && len(h.na) == 0 && v <= maxWhole && v >= -maxWhole {
+				if err == 0 && (next == end || next < end && data[next] == h.delim) && len(h.na) == 0 && v < maxWhole && v > -maxWhole {
 					out[k] = v
 					pos = next + 1
 					continue
@@ -167,20 +167,19 @@ func (p *part) number(h *head, raw []byte, decimal byte) (v float64, bad bool) {
 	if len(trimmed) != len(cell) {
 		p.trimmed++
 	}
-	if (v > maxWhole || v < -maxWhole) && isWhole(trimmed) {
+	if (v >= maxWhole || v <= -maxWhole) && isBigWhole(trimmed) {
 		p.big++
 	}
 	return v, false
 }
 
-// isWhole tells whether a number is written with digits only.
-func isWhole(cell []byte) bool {
-	for i, c := range cell {
-		if c-'0' > 9 && !(i == 0 && (c == '-' || c == '+')) {
-			return false
-		}
+// isBigWhole tells whether a number is written with digits only and is beyond 2^53, given that it is not below.
+func isBigWhole(cell []byte) bool {
+	if cell[0] == '-' || cell[0] == '+' {
+		cell = cell[1:]
 	}
-	return true
+	m, end := scanDigits(cell, 0, 0)
+	return end == len(cell) && (m != maxWhole || significant(cell) > exactDigits)
 }
 
 func (p *part) refuse(t *Table, row, col int, decimal byte) {

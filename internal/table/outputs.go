@@ -147,6 +147,9 @@ func (o *Outputs) target(name string) (string, fs.FileInfo, error) {
 	if name == "-" {
 		return "", nil, nil
 	}
+	if name == "" {
+		return "", nil, folderFault(name, errors.New("the name is empty"))
+	}
 	path := name
 	for range maxLinks {
 		info, err := o.fs().Lstat(path)

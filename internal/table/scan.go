@@ -13,7 +13,7 @@ type block struct {
 	data   []byte
 	starts []uint32 // where each row starts in data, and where the last one ends; blank lines may follow that end
 	row    int      // number of the first row
-	line   int      // line of data[0]
+	line   int      // line of data[0], from 1
 	multi  bool     // some cell holds a line end, so that rows and lines do not go in step
 }
 
@@ -24,24 +24,24 @@ func (b *block) raw(i int) []byte {
 	return trimEnd(b.data[b.starts[i]:b.starts[i+1]])
 }
 
-// scanned is a block with what was found wrong in it. The faults' positions are final.
+// scanned is a block with what was found wrong in it. Lines count from the block's own start.
 type scanned struct {
 	block
+	lines   int // line ends in data
 	refused fault.List
-	fatal   error // what ends the reading: bytes that are no text, a cap
-	blank   *fault.Error
+	fatal   error        // what ends the reading: bytes that are no text, a cap
+	blank   *fault.Error // blank lines at the end of data: wrong if a row follows
 }
 
 // scan finds the rows of a piece and checks their shape. It depends on the piece alone.
 func (h *head) scan(p piece, last bool) *scanned {
-	s := &scanned{block: block{data: p.data, line: p.line}}
-	if pos, code, message, hint := checkText(p.data); pos >= 0 {
-		e := h.at(p, pos, code, fmt.Sprintf("%s (offset %d)", message, p.off+int64(pos)))
-		e.Hint = hint
+	s := &scanned{block: block{data: p.data}}
+	if e := h.notText(p); e != nil {
 		s.fatal = e
 		return s
 	}
-	s.starts = make([]uint32, 0, bytes.Count(p.data, []byte{'\n'})+2)
+	s.lines = bytes.Count(p.data, []byte{'\n'})
+	s.starts = make([]uint32, 0, s.lines+2)
 	w := walker{h: h, p: p, s: s, last: last, hasCR: bytes.IndexByte(p.data, '\r') >= 0}
 	if bytes.IndexByte(p.data, '"') < 0 {
 		w.plain()
@@ -49,6 +49,17 @@ func (h *head) scan(p piece, last bool) *scanned {
 		w.quoted()
 	}
 	return s
+}
+
+// notText refuses bytes that are no text: NUL, invalid UTF-8. It gives nil for text.
+func (h *head) notText(p piece) *fault.Error {
+	pos, code, message, hint := checkText(p.data)
+	if pos < 0 {
+		return nil
+	}
+	e := h.at(p, pos, code, fmt.Sprintf("%s (offset %d)", message, p.off+int64(pos)))
+	e.Hint = hint
+	return e
 }
 
 // walker goes through the rows of one piece.
@@ -237,6 +248,6 @@ func (h *head) loneCR(p piece, pos int) *fault.Error {
 
 // at is a refusal at p.data[pos].
 func (h *head) at(p piece, pos int, code, message string) *fault.Error {
-	line, column := place(p.data, pos, p.line)
+	line, column := place(p.data, pos)
 	return &fault.Error{Exit: fault.Input, Code: code, File: h.name, Line: line, Column: column, Message: message}
 }

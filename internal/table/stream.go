@@ -22,6 +22,7 @@ type Stream struct {
 	gone  chan struct{} // closed when the reading goroutine has ended
 
 	rows   int64
+	lines  int          // before the next block
 	blank  *fault.Error // blank lines that end the last batch: wrong if a row follows
 	err    error        // what Next gives from now on
 	finish sync.Once
@@ -79,7 +80,7 @@ func (s *Stream) begin(o *Options) (*piece, *cutter, error) {
 	if bytes.HasPrefix(start, utf8Mark) {
 		s.head.mark, start = start[:3:3], start[3:]
 	}
-	cut := &cutter{in: s.src, o: o, name: s.head.name, line: 1, off: int64(len(s.head.mark)), carry: start}
+	cut := &cutter{in: s.src, o: o, name: s.head.name, off: int64(len(s.head.mark)), carry: start}
 	blank := 0
 	for {
 		p, err := cut.next()
@@ -108,10 +109,12 @@ func (s *Stream) afterHead(p piece, cut *cutter, o *Options) (*piece, *cutter, e
 		if err == nil {
 			p.data = append(p.data, more.data...)
 		} else if err != io.EOF {
+			moveDown(err, bytes.Count(p.data, []byte{'\n'}))
 			return nil, nil, err
 		}
 	}
 	rest, err := readHead(s.head, p, o)
+	s.lines = bytes.Count(s.head.raw, []byte{'\n'})
 	return &rest, cut, err
 }
 
@@ -190,8 +193,12 @@ func (s *Stream) Next() (*Table, error) {
 		return nil, s.err
 	}
 	b, refused, err := s.nextBlock()
-	if err == nil {
-		err = single(refused)
+	if refused != nil {
+		if err == nil {
+			err = single(refused)
+		} else {
+			err = joined(refused, err)
+		}
 	}
 	if err != nil {
 		s.err = err
@@ -202,53 +209,58 @@ func (s *Stream) Next() (*Table, error) {
 	return &Table{head: s.head, blocks: []*block{b}, rows: b.rows(), first: first}, nil
 }
 
-// nextBlock gives the next block with rows, with its refusals; a block that is refused counts on.
+// nextBlock gives the next block with its refusals, or what ends the reading.
 func (s *Stream) nextBlock() (*block, *fault.List, error) {
-	for {
-		var w *work
-		var ok bool
-		select {
-		case w, ok = <-s.order:
-		case <-s.ctx.Done():
-			return nil, nil, context.Cause(s.ctx)
-		}
-		if !ok {
-			if err := context.Cause(s.ctx); err != nil {
-				return nil, nil, err
-			}
-			if s.rows == 0 {
-				return nil, nil, s.noRows()
-			}
-			return nil, nil, io.EOF
-		}
-		<-w.done
-		if w.panic != nil {
-			panic(w.panic)
-		}
-		if w.err != nil {
-			return nil, nil, w.err
-		}
-		out := w.out
-		if out.fatal != nil {
-			return nil, &out.refused, out.fatal
-		}
-		if s.blank != nil && (out.rows() > 0) {
-			l := fault.List{}
-			l.Add(s.blank)
-			merge(&l, &out.refused)
-			out.refused = l
-			s.blank = nil
-		}
-		if s.blank == nil {
-			s.blank = out.blank
-		}
-		out.row = int(s.rows)
-		s.rows += int64(out.rows())
-		if s.rows > s.head.maxRows {
-			return nil, nil, &fault.Error{Exit: fault.Limit, Code: "C21", File: s.head.name, Message: fmt.Sprintf("more than %d rows", s.head.maxRows), Hint: "split the table"}
-		}
-		return &out.block, &out.refused, nil
+	var w *work
+	var ok bool
+	select {
+	case w, ok = <-s.order:
+	case <-s.ctx.Done():
+		return nil, nil, context.Cause(s.ctx)
 	}
+	if !ok {
+		if err := context.Cause(s.ctx); err != nil {
+			return nil, nil, err
+		}
+		if s.rows == 0 {
+			return nil, nil, s.noRows()
+		}
+		return nil, nil, io.EOF
+	}
+	<-w.done
+	switch {
+	case w.panic != nil:
+		panic(w.panic)
+	case w.err != nil:
+		moveDown(w.err, s.lines)
+		return nil, nil, w.err
+	}
+	out := w.out
+	for _, e := range out.refused.First {
+		moveDown(e, s.lines)
+	}
+	if out.fatal != nil {
+		moveDown(out.fatal, s.lines)
+		return nil, &out.refused, out.fatal
+	}
+	refused := &out.refused
+	if s.blank != nil && out.rows() > 0 {
+		refused = &fault.List{}
+		refused.Add(s.blank)
+		merge(refused, &out.refused)
+		s.blank = nil
+	}
+	if out.blank != nil && s.blank == nil {
+		moveDown(out.blank, s.lines)
+		s.blank = out.blank
+	}
+	out.row, out.line = int(s.rows), s.lines+1
+	s.rows += int64(out.rows())
+	s.lines += out.lines
+	if s.rows > s.head.maxRows {
+		return nil, nil, &fault.Error{Exit: fault.Limit, Code: "C21", File: s.head.name, Message: fmt.Sprintf("more than %d rows", s.head.maxRows), Hint: "split the table"}
+	}
+	return &out.block, refused, nil
 }
 
 func (s *Stream) noRows() error {

@@ -15,6 +15,7 @@ import (
 	"bytes"
 	"context"
 	"crypto/sha256"
+	"errors"
 	"fmt"
 	"io"
 	"sort"
@@ -68,11 +69,7 @@ func Read(ctx context.Context, name string, stdin io.Reader, o Options) (*Table,
 			merge(&refused, bad)
 		}
 		if err != nil {
-			if e, ok := err.(*fault.Error); ok && refused.Total > 0 {
-				refused.Add(e)
-				return nil, &refused
-			}
-			return nil, err
+			return nil, joined(&refused, err)
 		}
 		held += int64(cap(b.data)) + 4*int64(cap(b.starts))
 		if held > h.memory {
@@ -94,6 +91,16 @@ func Read(ctx context.Context, name string, stdin io.Reader, o Options) (*Table,
 		t.sum = s.src.sum()
 	}
 	return t, nil
+}
+
+// joined puts what ended the reading behind what was refused before it.
+func joined(refused *fault.List, err error) error {
+	var e *fault.Error
+	if refused.Total == 0 || !errors.As(err, &e) {
+		return err
+	}
+	refused.Add(e)
+	return refused
 }
 
 func overMemory(h *head, code, what string) error {
@@ -202,7 +209,8 @@ func (t *Table) At(row, col int) (line, column int) {
 	if !b.multi {
 		return b.line + i, cell + 1
 	}
-	return place(b.data, start+cell, b.line)
+	line, column = place(b.data, start+cell)
+	return line + b.line - 1, column
 }
 
 // Fault is a refusal of a cell, with exit code 3: the caller gives the code, what is wrong and what mends it.
