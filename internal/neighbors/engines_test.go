@@ -35,7 +35,7 @@ func engines(t *testing.T, m *points.Matrix, k int, o Options) map[string]*Lists
 func TestEnginesAgreeToTheBit(t *testing.T) {
 	r := rand.New(rand.NewPCG(21, 2))
 	for _, shape := range shapes {
-		for trial := range 40 {
+		for trial := range 24 {
 			n, d := 2+r.IntN(700), []int{1, 2, 3, 5, 9, 20, 33}[r.IntN(7)]
 			if trial%4 != 0 {
 				n = 2 + r.IntN(150)

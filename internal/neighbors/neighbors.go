@@ -7,6 +7,12 @@
 // distance (L1 distance with Manhattan) and, where that is equal, lexicographically by their coordinates, so that the
 // row number decides only between identical points, which points.Prepare leaves none of. All engines compute a distance
 // by the same sums in the same order and hence agree to the last bit.
+//
+// The engines: "tree", a k-d tree without pointers, for points of few intrinsic dimensions; "blocks", matrix products of
+// buckets of points, where a tree would look at most points anyway; "descent", the approximate one; and "buckets", boxes of
+// points in kyroy/kdtree, for WithinRadius. KNearest chooses by trying the exact engines on a few points and counting
+// their work. The bucket index could find the k nearest too; the tree is kept beside it because it takes less than two
+// thirds of its time (BenchmarkBuckets).
 package neighbors
 
 import (
@@ -35,7 +41,7 @@ type Options struct {
 	Metric   points.Metric       // "" means Euclidean; points.Cosine is Euclidean on the unit vectors that points.Prepare makes
 	Workers  int                 // 0 means GOMAXPROCS; the answer does not depend on it
 	Seed     uint64              // draws of the approximate search and of the sample its recall is measured on
-	MaxPairs int                 // most entries WithinRadius may store (each pair is two); 0 means 1<<31
+	MaxPairs int                 // most entries WithinRadius may store (each pair is two); 0 means 1<<27
 	Progress func(share float64) // called now and then, share in [0, 1], by one goroutine at a time; may be nil
 }
 
@@ -111,7 +117,7 @@ func KNearest(ctx context.Context, pts *points.Matrix, k int, o Options) (*Lists
 // check refuses what no search can take, and fills in the defaults of o.
 func check(pts *points.Matrix, o *Options) error {
 	o.Search, o.Metric = cmp.Or(o.Search, Exact), cmp.Or(o.Metric, points.Euclidean)
-	o.Workers, o.MaxPairs = parallel.Workers(o.Workers), cmp.Or(o.MaxPairs, 1<<31)
+	o.Workers, o.MaxPairs = parallel.Workers(o.Workers), cmp.Or(o.MaxPairs, 1<<27)
 	switch o.Search {
 	case Exact, Approximate, Auto:
 	default:

@@ -103,7 +103,7 @@ func fill(n, d int, f func(i, j int) float64) *points.Matrix {
 func TestKNearestMatchesTheDefinition(t *testing.T) {
 	r := rand.New(rand.NewPCG(11, 2))
 	for _, shape := range shapes {
-		for trial := range 60 {
+		for trial := range 40 {
 			n, d := 2+r.IntN(250), 1+r.IntN(6)
 			if trial%10 == 0 {
 				d = 17
@@ -136,7 +136,8 @@ func compareLists(m *points.Matrix, l *Lists, metric points.Metric) error {
 			if index[s] != wantIndex[s] && math.Abs(oracleDistance(m.Row(i), m.Row(int(index[s])), metric)-wantDist[s]) > slack {
 				return fmt.Errorf("point %d: neighbour %d is %d, want %d", i, s, index[s], wantIndex[s])
 			}
-			if index[s] != wantIndex[s] && dist[s] == math.Trunc(dist[s]) && wantDist[s] == dist[s] {
+			exact := wantDist[s] < 1<<26 && dist[s] == math.Trunc(dist[s]) // its square is a sum without rounding
+			if index[s] != wantIndex[s] && exact && wantDist[s] == dist[s] {
 				return fmt.Errorf("point %d: tied neighbour %d is %d, want %d", i, s, index[s], wantIndex[s])
 			}
 		}
@@ -159,8 +160,8 @@ func TestCompareListsRefuses(t *testing.T) {
 func TestWithinRadiusMatchesTheDefinition(t *testing.T) {
 	r := rand.New(rand.NewPCG(3, 2))
 	for _, shape := range shapes {
-		for trial := range 40 {
-			n, d := 2+r.IntN(300), 1+r.IntN(5)
+		for trial := range 20 {
+			n, d := 2+r.IntN(150), 1+r.IntN(5)
 			metric := []points.Metric{points.Euclidean, points.Manhattan}[trial%2]
 			m := shape.make(r, n, d)
 			_, far := oracle(m, r.IntN(n), n-1, metric)

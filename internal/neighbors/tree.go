@@ -123,7 +123,6 @@ func (t *tree) gap(q []float64, v int) float64 {
 type finder struct {
 	t         *tree
 	best      best
-	near      func(a, b []float64, most float64) float64
 	distances int64 // computed so far
 	boxes     int64 // looked at so far
 	stack     []pending
@@ -136,7 +135,7 @@ type pending struct {
 }
 
 func (t *tree) finder() *finder {
-	return &finder{t: t, best: best{pts: t.pts, id: t.id}, near: upTo(t.metric), stack: make([]pending, 0, 2*t.levels+2)}
+	return &finder{t: t, best: best{pts: t.pts, id: t.id}, stack: make([]pending, 0, 2*t.levels+2)}
 }
 
 // nearest fills close and index with the places of the points nearest to q. There must be len(close) of them.
@@ -219,9 +218,23 @@ func (f *finder) scan(q []float64, lo, hi int) {
 				worst = f.best.offer(c, int32(i))
 			}
 		}
+	case f.t.metric == points.Manhattan:
+		for i := lo; i < hi; i++ {
+			if c := taxicab(q, rows[:d]); c <= worst {
+				worst = f.best.offer(c, int32(i))
+			}
+			rows = rows[d:]
+		}
+	case d < 16:
+		for i := lo; i < hi; i++ {
+			if c := squared(q, rows[:d]); c <= worst {
+				worst = f.best.offer(c, int32(i))
+			}
+			rows = rows[d:]
+		}
 	default:
 		for i := lo; i < hi; i++ {
-			if c := f.near(q, rows[:d], worst); c <= worst {
+			if c := squaredUpTo(q, rows[:d], worst); c <= worst {
 				worst = f.best.offer(c, int32(i))
 			}
 			rows = rows[d:]
