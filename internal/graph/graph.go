@@ -3,9 +3,10 @@
 // FromLists (K nearest) and FromRagged (all within a radius) join the lists of one neighbour search into a Graph: the
 // undirected skeleton with a distance on each edge. Graph.LogWeights puts a kernel and a bandwidth on it and gives
 // ln w for each edge, the form every solver takes: weights stay logarithms, so no bandwidth underflows silently.
-// FromEdges builds the same form from weights that the user gives. Around them: Unreachable and Bridge for components
-// without a label, Tether for labels that carry noise, BandwidthWindow for the range of sound bandwidths, Measure for
-// the health of the graph, WriteEdgeList and WriteMatrixMarket for its export.
+// FromEdges builds the same form from weights that the user gives. Around them: FindReach and Graph.Join for components
+// without a label, SmallestK, SmallestBandwidth and SufficientK for what would reach them, Tether for labels that carry
+// noise, BandwidthWindow for the range of sound bandwidths, Measure for the health of the graph, WriteEdgeList and
+// WriteMatrixMarket for its export.
 //
 // Vertices are distinct points in an order that is a function of the point set; everything here follows that order and
 // nothing else, so the answers do not depend on the order of rows in a file, nor on the number of workers.
@@ -13,6 +14,7 @@ package graph
 
 import (
 	"fmt"
+	"sync"
 
 	"pinfill/internal/sparse"
 )
@@ -29,6 +31,11 @@ type Graph struct {
 	Skeleton *sparse.CSR // Val is the distance between the ends, in scaled units, > 0
 	Local    []float64   // own scale s_i of each vertex: distance to its neighbour of rank Rank, > 0; NaN if it has none
 	Rank     int         // LocalRank, or less where the lists were shorter
+
+	forests [2]struct { // spanning forests of the distances and of the local lengths, found once
+		once  sync.Once
+		edges []Edge
+	}
 }
 
 // Edges is the number of undirected edges.

@@ -26,14 +26,14 @@ func FromLists(l *neighbors.Lists, k, workers int) (*Graph, error) {
 	return &Graph{Skeleton: symmetrise(in, k, workers), Local: localScales(in, rank, workers), Rank: rank}, nil
 }
 
-// FromRagged makes a graph of all pairs within a radius. The lists hold each pair from both sides. near, if given, are
-// the nearest neighbours of the same vertices whatever the radius, for the own scales; without it a vertex's scale is
-// the distance to its LocalRank-th neighbour within the radius or, where there are fewer, to the farthest one.
+// FromRagged makes a graph of all pairs within a radius. The lists hold each pair from both sides and are used up: their
+// memory becomes the graph's. near, if given, are the nearest neighbours of the same vertices whatever the radius, for
+// the own scales; without it a vertex's scale is the distance to its LocalRank-th neighbour within the radius or, where
+// there are fewer, to the farthest one.
 func FromRagged(l *neighbors.Ragged, near *neighbors.Lists, workers int) (*Graph, error) {
 	n := len(l.Start) - 1
-	g := &Graph{Skeleton: &sparse.CSR{N: n, RowPtr: l.Start}, Rank: LocalRank}
-	g.Skeleton.Col = append([]int32(nil), l.Index...)
-	g.Skeleton.Val = append([]float64(nil), l.Dist...)
+	a := &sparse.CSR{N: n, RowPtr: l.Start, Col: l.Index, Val: l.Dist}
+	g := &Graph{Skeleton: a, Rank: LocalRank}
 	if near != nil {
 		if near.N != n {
 			return nil, sizeError("nearest neighbours", near.N, n)
@@ -47,17 +47,10 @@ func FromRagged(l *neighbors.Ragged, near *neighbors.Lists, workers int) (*Graph
 	} else {
 		g.Local = raggedScales(l, workers)
 	}
-	a := g.Skeleton
 	parallel.For(workers, n, rowGrain, func(lo, hi int) {
 		for i := lo; i < hi; i++ {
 			sparse.SortRow(a.Row(i))
 		}
 	})
 	return g, nil
-}
-
-// SmallestK is the smallest number of neighbours k for which every component of the graph of k neighbours holds a
-// label, labelled[v] marking the vertices with one; 0 if the lists are too short to say, or no vertex has a label.
-func SmallestK(l *neighbors.Lists, labelled []bool) int {
-	return smallestK(lists{n: l.N, stride: l.K, index: l.Index, dist: l.Dist}, labelled)
 }

@@ -180,6 +180,15 @@ func TestBlankMarksWhatNoLabelReaches(t *testing.T) {
 	}
 }
 
+// mask marks the labelled of n vertices.
+func mask(n int, labelled []int32) []bool {
+	m := make([]bool, n)
+	for _, v := range labelled {
+		m[v] = true
+	}
+	return m
+}
+
 func TestSmallestKAgainstEveryK(t *testing.T) {
 	found := 0
 	for seed := range uint64(80) {
@@ -187,12 +196,9 @@ func TestSmallestKAgainstEveryK(t *testing.T) {
 		most := min(15, pts.N-1)
 		l := nearest(t, pts, most)
 		rng := rand.New(rand.NewPCG(seed, 6))
-		labelled := make([]bool, pts.N)
 		var list []int32
 		for range 1 + rng.IntN(3) {
-			v := rng.IntN(pts.N)
-			labelled[v] = true
-			list = append(list, int32(v))
+			list = append(list, rng.Int32N(int32(pts.N)))
 		}
 		want := 0
 		for k := 1; k <= most && want == 0; k++ {
@@ -204,7 +210,7 @@ func TestSmallestKAgainstEveryK(t *testing.T) {
 				want = k
 			}
 		}
-		if got := SmallestK(l, labelled); got != want {
+		if got := SmallestK(l, mask(pts.N, list)); got != want {
 			t.Fatalf("seed %d: smallest k %d, want %d", seed, got, want)
 		}
 		if want > 1 {
@@ -216,6 +222,92 @@ func TestSmallestKAgainstEveryK(t *testing.T) {
 	}
 	if found < 20 {
 		t.Fatalf("only %d cases needed more than one neighbour", found)
+	}
+}
+
+// At SufficientK neighbours the graph has every bridge, so no component is left without a label.
+func TestSufficientKLeavesNothingToBridge(t *testing.T) {
+	for seed := range uint64(60) {
+		metric := []points.Metric{points.Euclidean, points.Manhattan}[seed%2]
+		pts := clusters(t, seed, 5, 7, 2)
+		l, _, err := neighbors.KNearest(context.Background(), pts, pts.N-1, neighbors.Options{Metric: metric})
+		if err != nil {
+			t.Fatal(err)
+		}
+		g, _ := FromLists(l, 2, 0)
+		w, err := g.LogWeights(Gaussian, Bandwidth{H: 1}, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		labelled := []int32{int32(seed) % int32(pts.N)}
+		r, _ := FindReach(w, labelled)
+		_, bridges, err := g.Join(context.Background(), w, r, pts, Gaussian, Bandwidth{H: 1}, neighbors.Options{Metric: metric})
+		if err != nil {
+			t.Fatal(err)
+		}
+		k := SufficientK(r, bridges, pts, metric, 2)
+		if len(bridges) == 0 {
+			if k != 0 {
+				t.Fatalf("%d neighbours for no bridge", k)
+			}
+			continue
+		}
+		wide, err := FromLists(l, k, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		edges := dense(wide.Skeleton)
+		for _, b := range bridges {
+			if _, ok := edges[[2]int32{b.From, b.To}]; !ok {
+				t.Fatalf("seed %d: at %d neighbours bridge %+v is no edge", seed, k, b)
+			}
+		}
+		if least := SmallestK(l, mask(pts.N, labelled)); k < least {
+			t.Fatalf("seed %d: %d neighbours suffice where %d are needed", seed, k, least)
+		}
+	}
+}
+
+func TestSmallestBandwidth(t *testing.T) {
+	finite := 0
+	for seed := range uint64(60) {
+		g, err := FromLists(nearest(t, clusters(t, seed, 3, 12, 2), 9), 9, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		n := int32(g.Skeleton.N)
+		labelled := []int32{0, n / 2, n - 1}
+		for _, local := range []bool{false, true} {
+			h := g.SmallestBandwidth(mask(int(n), labelled), local, 0)
+			lost := func(h float64) bool {
+				w, err := g.LogWeights(Box, Bandwidth{Local: local, H: h}, 0)
+				if err != nil {
+					t.Fatal(err)
+				}
+				r, _ := FindReach(w, labelled)
+				return r.Unlabelled() != nil
+			}
+			if math.IsInf(h, 1) {
+				if !lost(1e9) {
+					t.Fatalf("seed %d: the whole skeleton is reached, no bandwidth found", seed)
+				}
+				continue
+			}
+			finite++
+			if lost(h*(1+1e-12)) || !lost(h*(1-1e-9)) {
+				t.Fatalf("seed %d: %v is not the smallest bandwidth", seed, h)
+			}
+		}
+		all := make([]bool, n)
+		for v := range all {
+			all[v] = true
+		}
+		if h := g.SmallestBandwidth(all, false, 0); h != 0 {
+			t.Fatalf("all labelled: %v", h)
+		}
+	}
+	if finite < 20 {
+		t.Fatalf("only %d cases had a bandwidth", finite)
 	}
 }
 

@@ -1,6 +1,7 @@
 package graph
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -8,19 +9,20 @@ import (
 	"pinfill/internal/sparse"
 )
 
-// SpanningForest gives the edge lengths of a minimum spanning forest of a, whose Val is a length, in ascending order:
-// the graph cut at length r (edges longer than r removed) falls apart into N - (number of lengths <= r) pieces, and
-// the last length is the smallest r at which a hangs together as well as it ever does. Empty for a graph without edges.
+// SpanningForest gives the edges of a minimum spanning forest of a, whose Val is a length: each with I < J and its
+// length as W, in ascending order of length. The graph cut at length r (longer edges removed) falls apart into N less
+// the number of lengths <= r pieces, and the last length is the smallest r at which a hangs together as well as it
+// ever does. Empty for a graph without edges.
 //
 // Boruvka's method (1926): each round joins every piece to its nearest other piece. Equal lengths are told apart by
-// their ends, so rounds cannot close a cycle; the lengths themselves do not depend on that choice. The time is
-// O(entries log N), in practice 5 to 8 passes over the entries.
-func SpanningForest(a *sparse.CSR, workers int) []float64 {
+// their ends, so that rounds cannot close a cycle and the forest is one and the same for any number of workers. The
+// time is O(entries log N), in practice 5 to 8 passes over the entries.
+func SpanningForest(a *sparse.CSR, workers int) []Edge {
 	piece := make([]int32, a.N) // of each vertex
 	for v := range piece {
 		piece[v] = int32(v)
 	}
-	lengths := make([]float64, 0, max(a.N-1, 0))
+	forest := make([]Edge, 0, max(a.N-1, 0))
 	pieces := a.N
 	near := make([]outEdge, a.N)  // of each vertex, its shortest edge to another piece
 	best := make([]outEdge, a.N)  // of each piece
@@ -46,8 +48,10 @@ func SpanningForest(a *sparse.CSR, workers int) []float64 {
 			}
 		}
 		if !joined {
-			slices.Sort(lengths)
-			return lengths
+			slices.SortFunc(forest, func(x, y Edge) int {
+				return cmp.Or(cmp.Compare(x.W, y.W), cmp.Compare(x.I, y.I), cmp.Compare(x.J, y.J))
+			})
+			return forest
 		}
 		for c := range pieces {
 			parent[c] = int32(c)
@@ -63,10 +67,20 @@ func SpanningForest(a *sparse.CSR, workers int) []float64 {
 				continue // the pair chose each other: the smaller piece is not its own parent, this one is the root
 			}
 			parent[c] = other
-			lengths = append(lengths, e.length)
+			forest = append(forest, Edge{e.a, e.b, e.length})
 		}
 		pieces = contract(piece, parent[:pieces], renamed)
 	}
+}
+
+// forest is the spanning forest of g.lengths(local), kept for the next question.
+func (g *Graph) forest(local bool, workers int) []Edge {
+	f := &g.forests[0]
+	if local {
+		f = &g.forests[1]
+	}
+	f.once.Do(func() { f.edges = SpanningForest(g.lengths(local, workers), workers) })
+	return f.edges
 }
 
 // outEdge is an edge {a, b}, a < b, with its length; length -1 means none.

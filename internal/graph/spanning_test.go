@@ -71,7 +71,14 @@ func TestSpanningForestAgainstKruskal(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		got, want := SpanningForest(a, 3), kruskal(a)
+		var got []float64
+		for k, e := range SpanningForest(a, 3) {
+			if e.I >= e.J || dense(a)[[2]int32{e.I, e.J}] != e.W {
+				t.Fatalf("seed %d: edge %d of the forest, %+v, is none of the graph", seed, k, e)
+			}
+			got = append(got, e.W)
+		}
+		want := kruskal(a)
 		if !slices.Equal(got, want) {
 			t.Fatalf("seed %d: forest %v, want %v", seed, got, want)
 		}

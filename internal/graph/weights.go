@@ -101,9 +101,9 @@ func (g *Graph) underflow(k Kernel, b Bandwidth, workers int) *UnderflowError {
 	for _, d := range g.Skeleton.Val {
 		e.Smallest = min(e.Smallest, d)
 	}
-	tree := SpanningForest(g.lengths(b.Local, workers), workers)
+	tree := g.forest(b.Local, workers)
 	// Epanechnikov is zero at t = 1 itself, so the longest edge needs a little more than its own length.
-	e.Usable = 1.25 * tree[len(tree)-1]
+	e.Usable = 1.25 * tree[len(tree)-1].W
 	return e
 }
 

@@ -33,11 +33,11 @@ func (w Window) Open() bool { return w.Connect < w.High }
 func (g *Graph) BandwidthWindow(dim, p float64, local bool, count, workers int) Window {
 	w := Window{Local: local}
 	a := g.lengths(local, workers)
-	tree := SpanningForest(a, workers)
+	tree := g.forest(local, workers)
 	if len(tree) == 0 {
 		return w
 	}
-	w.Connect, w.Typical = tree[len(tree)-1], tree[len(tree)/2]
+	w.Connect, w.Typical = tree[len(tree)-1].W, tree[len(tree)/2].W
 	w.Longest = parallel.Max(workers, a.N, rowGrain, func(lo, hi int) float64 {
 		var m float64
 		for _, v := range a.Val[a.RowPtr[lo]:a.RowPtr[hi]] {
