@@ -23,7 +23,8 @@ type Score struct {
 	Certificate solve.Certificate
 	Certified   bool // every solve met its tolerance
 	Count       solve.Counts
-	Fields      [][]float64 // the solution, class by vertex
+	Fields      [][]float64    // the solution, class by vertex
+	Solves      []solve.Result // certificates behind Fields, one a component and class in that order, without values
 	loss        []float64   // by label: 0 or 1, or the squared residual; NaN where not answered
 	left        *LeftOut
 }
@@ -52,6 +53,8 @@ func (t *trial) score(ctx context.Context, s Setting, start [][]float64) (*Score
 	nan := math.NaN()
 	sc.Fields, sc.Certificate = fields, solve.Certificate{Gap: nan, Imbalance: nan, Width: nan, SlopeImbalance: nan}
 	for _, r := range results {
+		r.Values = nil
+		sc.Solves = append(sc.Solves, r)
 		sc.Count = addCounts(sc.Count, r.Counts)
 		sc.Certificate = worse(sc.Certificate, r.Certificate)
 		sc.Certified = sc.Certified && (r.Status == solve.Certified || r.Status == solve.Trivial)
