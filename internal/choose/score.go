@@ -25,7 +25,7 @@ type Score struct {
 	Count       solve.Counts
 	Fields      [][]float64    // the solution, class by vertex
 	Solves      []solve.Result // certificates behind Fields, one a component and class in that order, without values
-	loss        []float64   // by label: 0 or 1, or the squared residual; NaN where not answered
+	loss        []float64      // by label: 0 or 1, or the squared residual; NaN where not answered
 	left        *LeftOut
 }
 
