@@ -92,7 +92,7 @@ func Check(ctx context.Context, o *Options) (*Checked, error) {
 	}
 	c := &Checked{Advice: r.settingFigures(l)}
 	err = r.stage(ctx, "weights", func() error {
-		w, err := r.weighted(l.network, l.setting.neighbors, l.setting.kernel, l.setting.bandwidth)
+		w, err := r.weighted(l.network, l.setting.Neighbors, l.setting.Kernel, l.setting.Bandwidth)
 		if err != nil {
 			return err
 		}
@@ -164,12 +164,12 @@ func (c *Checked) lookAtDimension(r *run, l *labelled) error {
 	for _, f := range dim.Likelihood {
 		c.Dimension.Likelihood = append(c.Dimension.Likelihood, FigureAtK{f.K, Number(f.Value), Number(f.StdError)})
 	}
-	g, err := n.graph(l.setting.neighbors, r.Workers)
+	g, err := n.graph(l.setting.Neighbors, r.Workers)
 	if err != nil {
 		return err
 	}
 	for _, p := range windowPs {
-		v := dimension.Judge(n.n, dim, float64(l.setting.neighbors), p)
+		v := dimension.Judge(n.n, dim, float64(l.setting.Neighbors), p)
 		b := g.BandwidthWindow(dim.Value, p, false, 1, r.Workers)
 		w := WindowFigures{
 			P: Number(p), NeighborsLow: Number(v.Low), NeighborsHigh: Number(v.High), Inside: v.Inside,

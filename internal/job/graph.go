@@ -37,7 +37,7 @@ func Graph(ctx context.Context, o *Options, format Format) error {
 	}
 	s := r.plainSetting(n)
 	return r.stage(ctx, "write", func() error {
-		weights, err := r.weighted(n, s.neighbors, s.kernel, s.bandwidth)
+		weights, err := r.weighted(n, s.Neighbors, s.Kernel, s.Bandwidth)
 		if err != nil {
 			return err
 		}

@@ -6,26 +6,19 @@ import (
 	"slices"
 	"strconv"
 
+	"pinfill/internal/choose"
 	"pinfill/internal/encode"
 	"pinfill/internal/graph"
 	"pinfill/internal/solve"
 )
-
-// setting is what a solve needs beside the data: given by the user or chosen.
-type setting struct {
-	p         float64
-	neighbors int
-	kernel    graph.Kernel
-	bandwidth graph.Bandwidth
-	balance   string
-}
 
 // labelled is a run of label before anything is written.
 type labelled struct {
 	data    *data
 	network *network
 	field   *field
-	setting setting
+	setting choose.Setting
+	chosen  *choose.Score
 	bridged []bool // by vertex, nil when none is
 	result  *encode.Result
 	record  *Record
@@ -65,13 +58,7 @@ func (r *run) label(ctx context.Context) (*labelled, error) {
 	if err := r.placeLabels(d, l.network.vertices); err != nil {
 		return nil, err
 	}
-	if err := r.chooseSetting(ctx, l); err != nil {
-		return nil, err
-	}
-	if err := r.stage(ctx, "weights", func() error { return r.layField(ctx, l) }); err != nil {
-		return nil, err
-	}
-	if err := r.stage(ctx, "solve", func() error { return r.solveField(ctx, d, l.field, l.setting.p) }); err != nil {
+	if err := r.stage(ctx, "solve", func() error { return r.chooseSetting(ctx, l) }); err != nil {
 		return nil, err
 	}
 	if err := r.stage(ctx, "trust", func() error { return r.judge(ctx, l) }); err != nil {
@@ -81,20 +68,35 @@ func (r *run) label(ctx context.Context) (*labelled, error) {
 	return l, nil
 }
 
-// layField weights the graph, settles components without a label, and puts the labels on.
-func (r *run) layField(ctx context.Context, l *labelled) error {
-	n, s := l.network, l.setting
-	w, err := r.weighted(n, s.neighbors, s.kernel, s.bandwidth)
+// layField weights the graph for a setting, settles components without a label, and puts the labels on.
+func (r *run) layField(ctx context.Context, l *labelled, s choose.Setting) (*laid, error) {
+	n := l.network
+	out := &laid{setting: s}
+	w, err := r.weighted(n, s.Neighbors, s.Kernel, s.Bandwidth)
 	if err != nil {
-		return err
+		return nil, err
 	}
-	w, l.bridged, err = r.reach(ctx, l.data, n, w, s, &l.record.Graph)
-	if err != nil {
-		return err
+	if w, out.bridged, err = r.reach(ctx, n, w, s, out); err != nil {
+		return nil, err
 	}
-	l.record.Graph.measure(w, r.Workers)
-	l.field = &field{graph: w, fixed: n.fixed, targets: n.targets, at: n.at, tether: r.Tether}
-	return nil
+	out.figures.measure(w, r.Workers)
+	f := &field{graph: w, labels: r.labelsOf(l.data, n.vertices), n: n.n}
+	if r.Tether > 0 {
+		if f.graph, f.labels, err = r.tethered(l.data, n.vertices, w); err != nil {
+			return nil, err
+		}
+	}
+	out.field = f
+	return out, nil
+}
+
+// laid is the graph of one setting, ready to be solved on.
+type laid struct {
+	setting  choose.Setting
+	field    *field
+	bridged  []bool // by vertex, nil when none is
+	figures  GraphFigures
+	warnings []encode.Warning
 }
 
 // newResult puts the scores on the table's rows: given labels stand, every other reached row takes its answer.
@@ -164,19 +166,19 @@ func onRows(byVertex [][]float64, of []int32) [][]float64 {
 // settingFigures writes the setting into the record.
 func (r *run) settingFigures(l *labelled) Settings {
 	s := Settings{
-		P: Number(l.setting.p), Energy: energyText(r.Energy), Tether: Number(r.Tether), Unreachable: string(r.Unreachable),
+		P: Number(l.setting.P), Energy: energyText(r.Energy), Tether: Number(r.Tether), Unreachable: string(r.Unreachable),
 		Coverage: Number(r.Coverage), Drawn: string(r.Drawn), Tolerance: Number(tolerance(r.Tolerance)), Seed: r.Seed, SolveOn: r.SolveOn,
 	}
 	if l.data.labels.Task == encode.Classes {
-		s.Balance = l.setting.balance
+		s.Balance = balanceName(l.setting.Balance)
 	}
 	if l.network.given == nil {
-		s.Scale, s.Metric, s.Kernel = string(r.Scale), string(r.Metric), l.setting.kernel.String()
-		s.Bandwidth = bandwidthText(l.setting.bandwidth)
+		s.Scale, s.Metric, s.Kernel = string(r.Scale), string(r.Metric), l.setting.Kernel.String()
+		s.Bandwidth = bandwidthText(l.setting.Bandwidth)
 		if r.Radius > 0 {
 			s.Radius = Number(r.Radius)
 		} else {
-			s.Neighbors = l.setting.neighbors
+			s.Neighbors = l.setting.Neighbors
 		}
 	}
 	return s

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 
+	"pinfill/internal/choose"
 	"pinfill/internal/encode"
 	"pinfill/internal/fault"
 	"pinfill/internal/graph"
@@ -179,12 +180,13 @@ func (r *run) fromEdges(t *table.Table, v *vertices, edges []graph.Edge) (*netwo
 }
 
 // reach settles the components without a label. It gives the graph to solve on and, by vertex, whether it was bridged.
-func (r *run) reach(ctx context.Context, d *data, n *network, w *sparse.CSR, s setting, fig *GraphFigures) (*sparse.CSR, []bool, error) {
+func (r *run) reach(ctx context.Context, n *network, w *sparse.CSR, s choose.Setting, out *laid) (*sparse.CSR, []bool, error) {
 	reach, err := graph.FindReach(w, n.fixed)
 	if err != nil {
 		return nil, nil, err
 	}
 	lost := reach.Blank()
+	fig := &out.figures
 	fig.Components, fig.UnlabelledParts = len(reach.Size), len(reach.Unlabelled())
 	if lost == nil {
 		return w, nil, nil
@@ -199,26 +201,26 @@ func (r *run) reach(ctx context.Context, d *data, n *network, w *sparse.CSR, s s
 	case r.Unreachable == Stop:
 		return nil, nil, fault.Inputf("G07", "%s; label a row of each, or pass --unreachable=bridge or --unreachable=blank", text)
 	case r.Unreachable == Blank:
-		r.warnf("G07", "%s; they are left blank", text)
+		out.warnings = append(out.warnings, encode.Warning{Code: "G07", Text: text + "; they are left blank"})
 		return w, nil, nil
 	case n.given != nil:
 		return nil, nil, fault.Inputf("G07", "%s, and a given graph has no distances to bridge by; add edges, or pass --unreachable=blank", text)
 	}
-	g, err := n.graph(s.neighbors, r.Workers)
+	g, err := n.graph(s.Neighbors, r.Workers)
 	if err != nil {
 		return nil, nil, err
 	}
-	joined, bridges, err := g.Join(ctx, w, reach, n.space.Points, s.kernel, r.inUnits(n, s.bandwidth), r.searchOptions())
+	joined, bridges, err := g.Join(ctx, w, reach, n.space.Points, s.Kernel, r.inUnits(n, s.Bandwidth), r.searchOptions())
 	if err != nil {
 		return nil, nil, err
 	}
 	fig.BridgedParts = len(bridges)
-	r.warnf("G07", "%s; each was joined to the nearest labelled component, see pinfill_origin", text)
+	out.warnings = append(out.warnings, encode.Warning{Code: "G07", Text: text + "; each was joined to the nearest labelled component, see pinfill_origin"})
 	return joined, lost, nil
 }
 
 // connectHint says how many neighbours would connect every component to a label, where the search can tell.
-func (n *network) connectHint(s setting) string {
+func (n *network) connectHint(s choose.Setting) string {
 	if n.lists == nil {
 		return ""
 	}
@@ -226,7 +228,7 @@ func (n *network) connectHint(s setting) string {
 	for _, x := range n.fixed {
 		labelled[x] = true
 	}
-	if k := graph.SmallestK(n.lists, labelled); k > s.neighbors {
+	if k := graph.SmallestK(n.lists, labelled); k > s.Neighbors {
 		return fmt.Sprintf("; --neighbors=%d would reach them", k)
 	}
 	return ""

@@ -1,10 +1,11 @@
 package job
 
 import (
-	"context"
 	"fmt"
 	"math"
+	"slices"
 
+	"pinfill/internal/choose"
 	"pinfill/internal/encode"
 	"pinfill/internal/fault"
 	"pinfill/internal/graph"
@@ -14,114 +15,89 @@ import (
 
 // field is what is solved: a weighted graph with labels on it, and the answer.
 type field struct {
-	graph   *sparse.CSR // ln w
-	fixed   []int32
-	targets [][]float64 // one slice a class or one of numbers, by fixed vertex
-	tether  float64     // 0 means held
-	at      [][]int     // labels on each fixed vertex
-	scores  [][]float64 // one slice a class or one of numbers, by vertex; NaN out of reach of any label
-	solves  []SolveFigures
+	graph  *sparse.CSR   // ln w, components without a label settled, tethers added
+	labels choose.Labels // on the graph's vertices; with tethers on the extra vertices that stand for the labels
+	n      int           // vertices of the table; the graph has more with tethers
+	scores [][]float64   // one slice a class or one of numbers, by vertex; NaN out of reach of any label
+	solves []SolveFigures
 }
 
-// solveField solves every class on every component at p. Components are solved apart, so that what one holds cannot
-// change another's bits.
-func (r *run) solveField(ctx context.Context, d *data, f *field, p float64) error {
-	g, fixed, targets := f.graph, f.fixed, f.targets
-	if f.tether > 0 {
-		var err error
-		if g, fixed, targets, err = tethered(d, f); err != nil {
-			return err
-		}
+// labelsOf gives the labels on the vertices they are held at.
+func (r *run) labelsOf(d *data, v *vertices) choose.Labels {
+	l := choose.Labels{Task: choose.Classes, Vertex: v.fixed, Target: v.targets}
+	if d.labels.Task == encode.Numbers {
+		l.Task = choose.Numbers
 	}
-	f.scores = make([][]float64, len(targets))
-	for c := range f.scores {
-		f.scores[c] = make([]float64, g.N)
-		for i := range f.scores[c] {
-			f.scores[c][i] = math.NaN()
-		}
+	if d.group != nil {
+		l.Group = groupsOf(d, v.at)
 	}
-	index := make([]int32, g.N) // vertex -> position in fixed, or -1
-	for i := range index {
-		index[i] = -1
-	}
-	for k, x := range fixed {
-		index[x] = int32(k)
-	}
-	for part, piece := range sparse.Split(g) {
-		if err := r.solvePart(ctx, d, f, part, piece, index, targets, p); err != nil {
-			return err
-		}
-	}
-	for c := range f.scores {
-		f.scores[c] = f.scores[c][:f.graph.N]
-	}
-	return r.certified(f)
+	return l
 }
 
-// tethered gives the graph with one extra vertex for each label, and what those are held at.
-func tethered(d *data, f *field) (*sparse.CSR, []int32, [][]float64, error) {
+// groupsOf numbers the group of each labelled vertex; labels of one vertex are of one group.
+func groupsOf(d *data, at [][]int) []int32 {
+	names := slices.Clone(d.group)
+	slices.Sort(names)
+	names = slices.Compact(names)
+	groups := make([]int32, len(at))
+	for f, ks := range at {
+		g, _ := slices.BinarySearch(names, d.group[ks[0]])
+		groups[f] = int32(g)
+	}
+	return groups
+}
+
+// tethered gives the graph with one extra vertex for each label, and the labels on those.
+func (r *run) tethered(d *data, v *vertices, w *sparse.CSR) (*sparse.CSR, choose.Labels, error) {
+	l := r.labelsOf(d, v)
 	var ends []int32
-	var labels []int
-	for k, x := range f.fixed {
-		for _, label := range f.at[k] {
+	var from, which []int // fixed vertex and label behind each tether
+	for f, x := range v.fixed {
+		for _, k := range v.at[f] {
 			ends = append(ends, x)
-			labels = append(labels, label)
+			from = append(from, f)
+			which = append(which, k)
 		}
 	}
-	g, fixed, err := graph.Tether(f.graph, ends, math.Log(f.tether))
+	g, fixed, err := graph.Tether(w, ends, math.Log(r.Tether))
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, l, err
 	}
-	targets := make([][]float64, len(f.targets))
-	for c := range targets {
-		targets[c] = make([]float64, len(labels))
-		for t, k := range labels {
+	t := choose.Labels{Task: l.Task, Vertex: fixed, Target: make([][]float64, len(l.Target))}
+	for c := range t.Target {
+		t.Target[c] = make([]float64, len(which))
+		for i, k := range which {
 			switch {
-			case d.labels.Task == encode.Numbers:
-				targets[c][t] = d.labels.Value[k]
+			case l.Task == choose.Numbers:
+				t.Target[c][i] = d.labels.Value[k]
 			case int(d.labels.Class[k]) == c:
-				targets[c][t] = 1
+				t.Target[c][i] = 1
 			}
 		}
 	}
-	return g, fixed, targets, nil
+	if l.Group != nil {
+		for _, f := range from {
+			t.Group = append(t.Group, l.Group[f])
+		}
+	}
+	return g, t, nil
 }
 
-// solvePart solves one component.
-func (r *run) solvePart(ctx context.Context, d *data, f *field, part int, piece sparse.Part, index []int32, targets [][]float64, p float64) error {
-	prob := solve.Problem{Graph: piece.Graph, P: p, Energy: r.Energy}
-	var held []int32
-	for local, x := range piece.Vertices {
-		if index[x] >= 0 {
-			prob.Fixed = append(prob.Fixed, int32(local))
-			held = append(held, index[x])
-		}
+// takeScores keeps the chosen solution and its certificates.
+func (r *run) takeScores(d *data, f *field, s *choose.Score) error {
+	f.scores = make([][]float64, len(s.Fields))
+	for c := range f.scores {
+		f.scores[c] = s.Fields[c][:f.n]
 	}
-	if len(held) == 0 {
-		return nil
-	}
-	values := make([][]float64, len(targets))
-	for c := range targets {
-		values[c] = make([]float64, len(held))
-		for k, h := range held {
-			values[c][k] = targets[c][h]
-		}
-	}
-	results, err := solve.RunMany(ctx, prob, values, nil, solve.Settings{Tolerance: r.Tolerance, Workers: r.Workers, Progress: r.Progress})
-	if err != nil {
-		return err
-	}
-	for c, res := range results {
-		for local, x := range piece.Vertices {
-			f.scores[c][x] = res.Values[local]
-		}
+	classes := len(s.Fields)
+	for i, res := range s.Solves {
 		what := r.Label
 		if d.labels.Task == encode.Classes {
-			what = d.labels.Names[c]
+			what = d.labels.Names[i%classes]
 		}
-		f.solves = append(f.solves, solveFigures(what, part, res))
+		f.solves = append(f.solves, solveFigures(what, i/classes, res))
 	}
-	return nil
+	return r.certified(f)
 }
 
 func solveFigures(what string, part int, res solve.Result) SolveFigures {
