@@ -20,10 +20,30 @@ func newBlock(a *sddm, workers, width int) *block {
 	return &block{a: a, workers: workers, width: width, b: v(), x: v(), r: v(), z: v(), p: v(), q: v()}
 }
 
-// reduce adds part over the chunks of rows in order.
+// tileRows is the number of rows over which one vector after the other is worked on, so that they stay in the
+// nearest cache.
+const tileRows = 256
+
+func tiles(lo, hi int, body func(lo, hi int)) {
+	for ; lo < hi; lo += tileRows {
+		body(lo, min(lo+tileRows, hi))
+	}
+}
+
+// reduce adds part over the tiles of rows in order.
 func (k *block) reduce(part func(lo, hi int, to *[2]scalars)) (sum scalars, largest scalars) {
 	parts := make([][2]scalars, (k.a.n+sumChunk-1)/sumChunk)
-	parallel.ForChunk(k.workers, k.a.n, sumChunk, func(_, c, lo, hi int) { part(lo, hi, &parts[c]) })
+	parallel.ForChunk(k.workers, k.a.n, sumChunk, func(_, n, lo, hi int) {
+		to := &parts[n]
+		tiles(lo, hi, func(lo, hi int) {
+			var t [2]scalars
+			part(lo, hi, &t)
+			for c := range k.width {
+				to[0][c] += t[0][c]
+				to[1][c] = max(to[1][c], t[1][c])
+			}
+		})
+	})
 	for _, p := range parts {
 		for c := range k.width {
 			sum[c] += p[0][c]
@@ -84,12 +104,14 @@ func (k *block) multiply() scalars {
 // direct sets p = z + beta p.
 func (k *block) direct(beta *scalars) {
 	parallel.For(k.workers, k.a.n, sumChunk, func(lo, hi int) {
-		for c := range k.width {
-			b := beta[c]
-			for at := lo*k.width + c; at < hi*k.width; at += k.width {
-				k.p[at] = k.z[at] + float64(b*k.p[at])
+		tiles(lo, hi, func(lo, hi int) {
+			for c := range k.width {
+				b := beta[c]
+				for at := lo*k.width + c; at < hi*k.width; at += k.width {
+					k.p[at] = k.z[at] + float64(b*k.p[at])
+				}
 			}
-		}
+		})
 	})
 }
 
@@ -146,12 +168,21 @@ func (k *block) inspect(to *[3]scalars, lo, hi int) {
 // applied is what a preconditioner reports of z.
 type applied struct{ zr, zq, largest scalars }
 
-// total adds up what each chunk of rows reports of z.
+// total adds up what chunk leaves in z, tile by tile.
 func (k *block) total(chunk func(lo, hi int)) (out applied) {
 	parts := make([][3]scalars, (k.a.n+sumChunk-1)/sumChunk)
 	parallel.ForChunk(k.workers, k.a.n, sumChunk, func(_, n, lo, hi int) {
-		chunk(lo, hi)
-		k.inspect(&parts[n], lo, hi)
+		to := &parts[n]
+		tiles(lo, hi, func(lo, hi int) {
+			chunk(lo, hi)
+			var t [3]scalars
+			k.inspect(&t, lo, hi)
+			for c := range k.width {
+				to[0][c] += t[0][c]
+				to[1][c] += t[1][c]
+				to[2][c] = max(to[2][c], t[2][c])
+			}
+		})
 	})
 	for _, p := range parts {
 		for c := range k.width {

@@ -61,7 +61,18 @@ func (h *hierarchy) krylov(k, width int) []float32 {
 	v1, r, c2 := l.work[3], l.work[4], l.work[5]
 	sum := func(part func(lo, hi int, to *[3]scalars)) (total [3]scalars) {
 		parts := make([][3]scalars, (l.n+sumChunk-1)/sumChunk)
-		parallel.ForChunk(h.workers, l.n, sumChunk, func(_, c, lo, hi int) { part(lo, hi, &parts[c]) })
+		parallel.ForChunk(h.workers, l.n, sumChunk, func(_, n, lo, hi int) {
+			to := &parts[n]
+			tiles(lo, hi, func(lo, hi int) {
+				var t [3]scalars
+				part(lo, hi, &t)
+				for v := range to {
+					for c := range width {
+						to[v][c] += t[v][c]
+					}
+				}
+			})
+		})
 		for _, p := range parts {
 			for v := range total {
 				for c := range width {
@@ -101,7 +112,9 @@ func (h *hierarchy) krylov(k, width int) []float32 {
 			step[c] -= gamma[c] * alpha2[c] / (rho1[c] * rho2)
 		}
 	}
-	parallel.For(h.workers, l.n, sumChunk, func(lo, hi int) { l.combine(width, &step, c1, &second, c2, lo, hi) })
+	parallel.For(h.workers, l.n, sumChunk, func(lo, hi int) {
+		tiles(lo, hi, func(lo, hi int) { l.combine(width, &step, c1, &second, c2, lo, hi) })
+	})
 	return c1
 }
 

@@ -4,7 +4,7 @@ import "slices"
 
 const (
 	groundSweeps = 4  // sweeps before the search for what is left
-	deepNetwork  = 8  // edges from the ground beyond which Jacobi is not tried: it needs more iterations than that
+	deepNetwork  = 5  // edges from the ground beyond which Jacobi is not tried: it needs more iterations than that
 	deepSamples  = 16 // vertices from which the depth is measured
 )
 

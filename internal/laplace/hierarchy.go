@@ -109,13 +109,15 @@ func (h *hierarchy) apply(k *block, size *scalars) applied {
 		}
 	}
 	parallel.For(h.workers, l.n, sumChunk, func(lo, hi int) {
-		for c := range k.width {
-			at := lo*k.width + c
-			for _, d := range l.d[lo:hi] {
-				g[at] = float32(k.r[at] / d * up[c])
-				at += k.width
+		tiles(lo, hi, func(lo, hi int) {
+			for c := range k.width {
+				at := lo*k.width + c
+				for _, d := range l.d[lo:hi] {
+					g[at] = float32(k.r[at] / d * up[c])
+					at += k.width
+				}
 			}
-		}
+		})
 	})
 	h.cycle(0, k.width, g, out)
 	return k.total(func(lo, hi int) {

@@ -224,7 +224,7 @@ func summary(columns []column, before []int) Stats {
 
 // tooSlow predicts from the fall of the residual so far whether Jacobi will take longer than multigrid.
 func tooSlow(iteration int, c *column, rr, tol float64) bool {
-	if iteration < 20 || iteration%5 != 0 {
+	if iteration < 12 || iteration%4 != 0 {
 		return false
 	}
 	fall := math.Log(c.first/rr) / float64(iteration)
