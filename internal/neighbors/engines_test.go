@@ -2,6 +2,7 @@ package neighbors
 
 import (
 	"context"
+	"math"
 	"math/rand/v2"
 	"slices"
 	"testing"
@@ -35,8 +36,8 @@ func engines(t *testing.T, m *points.Matrix, k int, o Options) map[string]*Lists
 func TestEnginesAgreeToTheBit(t *testing.T) {
 	r := rand.New(rand.NewPCG(21, 2))
 	for _, shape := range shapes {
-		for trial := range 24 {
-			n, d := 2+r.IntN(700), []int{1, 2, 3, 5, 9, 20, 33}[r.IntN(7)]
+		for trial := range 16 {
+			n, d := 2+r.IntN(600), []int{1, 2, 3, 5, 9, 20, 33}[r.IntN(7)]
 			if trial%4 != 0 {
 				n = 2 + r.IntN(150)
 			}
@@ -80,7 +81,7 @@ func clustered(n, d, clusters, inner int) *points.Matrix {
 }
 
 func TestApproximateMeasuresItsRecall(t *testing.T) {
-	m := clustered(4000, 24, 20, 8)
+	m := clustered(2500, 16, 12, 8)
 	o := Options{Search: Approximate, Workers: 2, Seed: 5}
 	got, rep, err := KNearest(context.Background(), m, 10, o)
 	if err != nil {
@@ -113,7 +114,7 @@ func TestPermutedRowsGiveTheSameLists(t *testing.T) {
 	r := rand.New(rand.NewPCG(41, 2))
 	for _, search := range []Search{Exact, Approximate} {
 		for _, shape := range shapes {
-			raw := shape.make(r, 3000, 3)
+			raw := shape.make(r, 2100, 3)
 			s, err := points.Prepare(context.Background(), raw, points.Options{})
 			if err != nil {
 				t.Fatal(err)
@@ -139,5 +140,114 @@ func TestPermutedRowsGiveTheSameLists(t *testing.T) {
 				}
 			}
 		}
+	}
+}
+
+// TestAutoAndManhattan covers what the choice of engine can lead to: Auto stays exact where that is cheap, and the
+// approximate search knows the L1 distance.
+func TestAutoAndManhattan(t *testing.T) {
+	m := clustered(2100, 12, 8, 6)
+	_, rep, err := KNearest(context.Background(), m, 5, Options{Search: Auto})
+	if err != nil || !rep.Exact {
+		t.Errorf("Auto on a small table: %+v, %v", rep, err)
+	}
+	got, rep, err := KNearest(context.Background(), m, 5, Options{Search: Approximate, Metric: points.Manhattan})
+	if err != nil || rep.Exact || rep.Recall < wantedRecall {
+		t.Fatalf("approximate Manhattan: %+v, %v", rep, err)
+	}
+	for i := range m.N {
+		index, dist := got.Row(i)
+		for s, j := range index {
+			if want := taxicab(m.Row(i), m.Row(int(j))); int(j) == i || dist[s] != want || s > 0 && dist[s] < dist[s-1] {
+				t.Fatalf("point %d: neighbour %d is %d at %v, its distance is %v", i, s, j, dist[s], want)
+			}
+		}
+	}
+	if _, rep, _ = KNearest(context.Background(), clustered(1000, 4, 3, 2), 5, Options{Search: Approximate}); !rep.Exact {
+		t.Error("approximate search of few points was not exact")
+	}
+}
+
+// TestPlanChoosesByTheData: uniform points of many columns go to blocks, points of few intrinsic dimensions to the tree.
+func TestPlanChoosesByTheData(t *testing.T) {
+	r := rand.New(rand.NewPCG(61, 2))
+	for _, c := range []struct {
+		name   string
+		m      *points.Matrix
+		blocks bool
+	}{
+		{"uniform in 2 columns", fill(5000, 2, func(int, int) float64 { return r.Float64() }), false},
+		{"curve in 40 columns", fill(5000, 40, func(i, j int) float64 { return math.Sin(float64(i*(j+1)) / 5000) }), false},
+		{"normal in 40 columns", fill(5000, 40, func(int, int) float64 { return r.NormFloat64() }), true},
+	} {
+		_, rep, err := KNearest(context.Background(), c.m, 8, Options{})
+		if err != nil || (rep.Engine == "blocks") != c.blocks {
+			t.Errorf("%s: %+v, %v", c.name, rep, err)
+		}
+	}
+}
+
+func TestSearchesEndWithTheirContext(t *testing.T) {
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	m := clustered(2500, 6, 3, 4)
+	for _, search := range []Search{Exact, Approximate} {
+		if _, _, err := KNearest(ctx, m, 5, Options{Search: search}); err != context.Canceled {
+			t.Errorf("%s: %v", search, err)
+		}
+	}
+	if _, _, err := WithinRadius(ctx, m, 1, Options{}); err != context.Canceled {
+		t.Errorf("radius: %v", err)
+	}
+}
+
+func TestProgressGrowsToOne(t *testing.T) {
+	last := 0.0
+	o := Options{Workers: 2, Progress: func(share float64) {
+		if share < last || share > 1 {
+			t.Errorf("progress %v after %v", share, last)
+		}
+		last = share
+	}}
+	if _, _, err := KNearest(context.Background(), clustered(3000, 3, 3, 3), 5, o); err != nil || last != 1 {
+		t.Errorf("progress ended at %v (%v)", last, err)
+	}
+}
+
+func TestQueriesAllocateNothing(t *testing.T) {
+	m := clustered(3000, 3, 3, 3)
+	x, err := NewIndex(context.Background(), m, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	index, dist := make([]int32, 10), make([]float64, 10)
+	if allocs := testing.AllocsPerRun(200, func() {
+		if err := x.Nearest(m.Row(7), index, dist); err != nil {
+			t.Fatal(err)
+		}
+	}); allocs > 0.5 { // the pool may be emptied by the collector in between
+		t.Errorf("%v allocations a query", allocs)
+	}
+	if index[0] != 7 || dist[0] != 0 {
+		t.Errorf("the point itself was not found: %d at %v", index[0], dist[0])
+	}
+	if x.Nearest(m.Row(7)[:2], index, dist) == nil || x.Nearest(m.Row(7), index[:3], dist) == nil {
+		t.Error("wrong sizes passed")
+	}
+}
+
+// TestRadiusIsInclusive: points on a grid of step 0.1 have neighbours at the radius exactly as computed.
+func TestRadiusIsInclusive(t *testing.T) {
+	for _, radius := range []float64{0.1, 0.3, 1e-3, 7, 1e-200} {
+		for _, metric := range []points.Metric{points.Euclidean, points.Manhattan} {
+			if b := bound(metric, radius); metric == points.Euclidean && (math.Sqrt(b) > radius || math.Sqrt(math.Nextafter(b, 1e300)) <= radius) {
+				t.Errorf("bound %v for radius %v", b, radius)
+			}
+		}
+	}
+	m := fill(100, 2, func(i, j int) float64 { return float64([]int{i % 10, i / 10}[j]) })
+	got, _, err := WithinRadius(context.Background(), m, 1, Options{})
+	if err != nil || len(got.Index) != 4*90 { // 2 * 10 * 9 grid edges, each twice
+		t.Errorf("%d neighbours on a 10 by 10 grid, want 360 (%v)", len(got.Index), err)
 	}
 }

@@ -23,10 +23,11 @@ func projections(t *tree, seed uint64, workers int) (places []int32, starts []in
 	parts := []int{0, n}
 	for level := uint64(0); n>>level > projectLeaf; level++ {
 		next := make([]int, 2*len(parts)-1)
+		next[len(next)-1] = n
 		parallel.For(workers, len(parts)-1, 1, func(v, _ int) {
 			lo, hi := parts[v], parts[v+1]
 			mid := lo + (hi-lo)/2
-			next[2*v], next[2*v+1], next[2*v+2] = lo, mid, hi
+			next[2*v], next[2*v+1] = lo, mid
 			cutAlong(t, places[lo:hi], rand.New(rand.NewPCG(seed^level<<56, uint64(v))))
 		})
 		parts = next

@@ -1,5 +1,6 @@
 // Package points holds rows of numbers and puts them into the form that neighbour search needs: scaled columns,
-// one row for each distinct point, in an order that follows the space and not the file.
+// one row for each distinct point, in an order that follows the space and not the file. Prepare does all of it; the
+// Scaling it gives takes further rows to the same space.
 package points
 
 // Matrix is a dense row-major matrix of N points in D columns.

@@ -251,3 +251,73 @@ func TestOrderIsATree(t *testing.T) {
 		}
 	}
 }
+
+// TestManyRows takes the paths that only many rows take: several chunks and goroutines, and input that has few values.
+func TestManyRows(t *testing.T) {
+	r := rand.New(rand.NewPCG(8, 1))
+	for _, values := range []int{2, 50, 1 << 40} {
+		m := random(r, 60_000, 2, func(int, int) float64 { return float64(r.IntN(values)) })
+		a := prepare(t, m, Options{Workers: 1})
+		b := prepare(t, m, Options{Workers: 4})
+		if !slices.Equal(a.Points.Data, b.Points.Data) || !slices.Equal(a.Vertex, b.Vertex) {
+			t.Errorf("%d values: one worker and four gave different points", values)
+		}
+		if want := min(values*values, m.N); values < 100 && a.Points.N != want {
+			t.Errorf("%d distinct points, want %d", a.Points.N, want)
+		}
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	if _, err := Prepare(ctx, random(r, 40_000, 2, func(int, int) float64 { return r.Float64() }), Options{}); !errors.Is(err, context.Canceled) {
+		t.Errorf("cancelled: %v", err)
+	}
+}
+
+func TestSelectNthMatchesSorting(t *testing.T) {
+	r := rand.New(rand.NewPCG(9, 1))
+	for trial := range 2000 {
+		x := make([]float64, 1+r.IntN(300))
+		for i := range x {
+			x[i] = float64(r.IntN(1 + trial%97))
+			if trial%3 == 0 {
+				x[i] = float64(min(i, len(x)-i)) // up and down
+			}
+		}
+		sorted := slices.Sorted(slices.Values(x))
+		k := r.IntN(len(x))
+		if got := selectNth(x, k); got != sorted[k] {
+			t.Fatalf("%d-th of %d is %v, got %v", k, len(x), sorted[k], got)
+		}
+	}
+}
+
+func TestValidateRefuses(t *testing.T) {
+	good := func() *Scaling {
+		return &Scaling{Inputs: 3, Columns: []int{0, 2}, Power: []int{1, 2}, Centre: []float64{0, 1}, Spread: []float64{1, 2}}
+	}
+	if err := good().Validate(); err != nil {
+		t.Fatal(err)
+	}
+	for name, spoil := range map[string]func(s *Scaling){
+		"columns":   func(s *Scaling) { s.Columns = []int{2, 2} },
+		"beyond":    func(s *Scaling) { s.Columns = []int{0, 3} },
+		"lengths":   func(s *Scaling) { s.Power = s.Power[:1] },
+		"spread":    func(s *Scaling) { s.Spread[1] = 0 },
+		"centre":    func(s *Scaling) { s.Centre[1] = math.NaN() },
+		"power":     func(s *Scaling) { s.Power[0] = 1 << 20 },
+		"no column": func(s *Scaling) { *s = Scaling{Inputs: 3} },
+	} {
+		s := good()
+		spoil(s)
+		if s.Validate() == nil {
+			t.Errorf("%s: no error", name)
+		}
+	}
+}
+
+func TestApplyRefusesWhatOverflows(t *testing.T) {
+	s := prepare(t, random(nil, 9, 1, func(i, _ int) float64 { return 1e-300 * float64(i) }), Options{})
+	if err := s.Scaling.Apply(make([]float64, 1), []float64{1e300}); !errors.Is(err, ErrOutOfRange) {
+		t.Errorf("error %v", err)
+	}
+}
