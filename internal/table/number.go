@@ -3,7 +3,6 @@ package table
 import (
 	"encoding/binary"
 	"math"
-	"math/bits"
 	"strconv"
 	"unsafe"
 )
@@ -91,17 +90,7 @@ const exactDigits = 19
 // position after the last.
 func scanDigits(data []byte, p int, m uint64) (uint64, int) {
 	for p+8 <= len(data) {
-		const zeros = 0x3030303030303030
-		w := binary.LittleEndian.Uint64(data[p:])
-		// Digits become 0 to 9; any other byte has a bit in its upper half, or gets one when 6 is added. A carry out of
-		// a byte that is no digit runs into bytes after it, which do not matter.
-		d := w ^ zeros
-		other := (d | d + 0x0606060606060606) & 0xf0f0f0f0f0f0f0f0
-		n := bits.TrailingZeros64(other) >> 3 // digits before the first other byte
-		d <<= 64 - 8*n                        // the last digit into the highest byte, zeros before the first
-		// Pairs, fours, all eight: the sum of neighbours with weights 10, 100, 10000 (Lemire 2021, section 3).
-		d = d*10 + d>>8
-		d = (d&0x000000ff000000ff*0x000f424000000064 + d>>16&0x000000ff000000ff*0x0000271000000001) >> 32
+		n, d := leadingDigits(binary.LittleEndian.Uint64(data[p:]))
 		m = m*shift10[n&15] + d
 		p += n
 		if n < 8 {

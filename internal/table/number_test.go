@@ -37,6 +37,10 @@ func checkNumber(t *testing.T, text string) {
 	case err != nil || math.Float64bits(got) != math.Float64bits(want):
 		t.Fatalf("%q: %v (%x), %v; strconv says %v (%x)", text, got, math.Float64bits(got), err, want, math.Float64bits(want))
 	}
+	padded := []byte(text + ";" + strings.Repeat(" ", quickSpan))
+	if v, next := quickNumber(padded, 0, '.'); next == len(text) && math.Float64bits(v) != math.Float64bits(got) {
+		t.Fatalf("%q: the quick way gives %v, the other %v", text, v, got)
+	}
 	if comma, err2 := ParseNumber([]byte(strings.Replace(text, ".", ",", 1)), ','); comma != got || err2 != err {
 		t.Fatalf("%q with a decimal comma: %v, %v; want %v, %v", text, comma, err2, got, err)
 	}

@@ -62,7 +62,9 @@ func (t *Table) Numbers(ctx context.Context, cols []int, o NumberOptions) (*Numb
 			stop.Store(true)
 			return
 		}
-		parts[chunk].rows(t, n, target, lo, hi, o.Decimal)
+		p := &parts[chunk]
+		p.rows(t, target, lo, hi, o.Decimal, func(row int) []float64 { return n.Data[row*n.Cols : (row+1)*n.Cols] },
+			func(row, col int) { p.refuse(t, row, col, o.Decimal) })
 	})
 	if err := ctx.Err(); err != nil {
 		return nil, context.Cause(ctx)
@@ -107,9 +109,10 @@ type part struct {
 	more                  int
 }
 
-// rows reads rows lo to hi. Most cells are plain numbers and end where the number ends: those take one pass over their
-// bytes. Any other goes to number.
-func (p *part) rows(t *Table, n *Numbers, target []int, lo, hi int, decimal byte) {
+// rows reads rows lo to hi into what out gives for each; target maps table columns to places there, or to -1, and bad
+// is told of cells that are neither missing nor numbers. Most cells are plain numbers and end where the number ends:
+// those take one pass over their bytes. Any other goes to number.
+func (p *part) rows(t *Table, target []int, lo, hi int, decimal byte, out func(row int) []float64, bad func(row, col int)) {
 	h := t.head
 	last := -1 // table column after which a row holds nothing wanted
 	for c, k := range target {
@@ -121,31 +124,34 @@ func (p *part) rows(t *Table, n *Numbers, target []int, lo, hi int, decimal byte
 	if sign == h.delim {
 		sign = 0 // it ends an unquoted cell
 	}
+	quick := len(h.na) == 0 // a number may mean missing otherwise
 	for row := lo; row < hi; {
 		b, i := t.find(row)
 		data := b.data
 		for ; i < b.rows() && row < hi; i, row = i+1, row+1 {
-			out := n.Data[row*n.Cols : (row+1)*n.Cols]
+			to := out(row)
 			pos, end := int(b.starts[i]), int(b.starts[i+1])
-			end = int(b.starts[i]) + len(trimEnd(data[pos:end]))
+			end = pos + len(trimEnd(data[pos:end]))
 			for col := 0; col <= last; col++ {
 				k := target[col]
 				if k < 0 {
 					pos += cellEnd(data[pos:end], 0, h.delim) + 1
 					continue
 				}
-				v, next, err := scanNumber(data, pos, sign)
-				if err == 0 && (next == end || next < end && data[next] == h.delim) && len(h.na) == 0 && v < maxWhole && v > -maxWhole {
-					out[k] = v
-					pos = next + 1
-					continue
+				if quick {
+					v, next := quickNumber(data, pos, sign)
+					if next > 0 && (next == end || data[next] == h.delim && next < end) && v < maxWhole && v > -maxWhole {
+						to[k] = v
+						pos = next + 1
+						continue
+					}
 				}
-				next = pos + cellEnd(data[pos:end], 0, h.delim)
-				v, bad := p.number(h, data[pos:next], decimal)
-				if bad {
-					p.refuse(t, row, col, decimal)
+				next := pos + cellEnd(data[pos:end], 0, h.delim)
+				v, wrong := p.number(h, data[pos:next], decimal)
+				if wrong {
+					bad(row, col)
 				}
-				out[k] = v
+				to[k] = v
 				pos = next + 1
 			}
 		}
@@ -193,21 +199,6 @@ func (p *part) refuse(t *Table, row, col int, decimal byte) {
 	p.refused = append(p.refused, t.NumberFault(row, col, decimal))
 }
 
-// eachCell calls f for the raw cells of rows lo to hi, row by row.
-func (t *Table) eachCell(lo, hi int, f func(row, col int, raw []byte)) {
-	for row := lo; row < hi; {
-		b, i := t.find(row)
-		for ; i < b.rows() && row < hi; i, row = i+1, row+1 {
-			line := b.raw(i)
-			for col, pos := 0, 0; pos <= len(line); col++ {
-				end := cellEnd(line, pos, t.head.delim)
-				f(row, col, line[pos:end])
-				pos = end + 1
-			}
-		}
-	}
-}
-
 // NumberFault is the refusal of a cell that is not a number, or nil where it is one or is missing.
 func (t *Table) NumberFault(row, col int, decimal byte) *fault.Error {
 	if decimal == 0 {
@@ -239,14 +230,14 @@ func (t *Table) FirstNonNumber(col int) int {
 		}
 		parallel.For(t.head.workers, t.rows, rowGrain, func(lo, hi int) {
 			var p part
-			t.eachCell(lo, hi, func(row, col int, raw []byte) {
-				if int64(row) > found[col].Load() {
-					return
+			target := make([]int, t.head.cols)
+			for c := range target {
+				if target[c] = c; found[c].Load() < int64(lo) {
+					target[c] = -1 // settled by a row before these
 				}
-				if _, bad := p.number(t.head, raw, t.head.decimal); bad {
-					lower(&found[col], int64(row))
-				}
-			})
+			}
+			scratch := make([]float64, t.head.cols)
+			p.rows(t, target, lo, hi, t.head.decimal, func(int) []float64 { return scratch }, func(row, col int) { lower(&found[col], int64(row)) })
 		})
 		for c := range found {
 			if row := found[c].Load(); row != math.MaxInt64 {
