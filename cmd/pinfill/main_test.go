@@ -1,12 +1,9 @@
 package main
 
 import (
-	"errors"
 	"flag"
 	"os"
-	"os/exec"
 	"path/filepath"
-	"strconv"
 	"testing"
 
 	"github.com/rogpeppe/go-internal/testscript"
@@ -27,32 +24,8 @@ func runScripts(t *testing.T, dir string) {
 	testscript.Run(t, testscript.Params{
 		Dir:           filepath.Join("testdata", dir),
 		UpdateScripts: *update,
-		Cmds: map[string]func(ts *testscript.TestScript, neg bool, args []string){
-			"exitcode": exitCode,
-		},
-		RequireExplicitExec: false,
+		Cmds:          commands,
 	})
-}
-
-// exitCode runs a command and checks its exact exit code: exitcode 3 pinfill label ... Its standard output and error
-// are then there for stdout and stderr.
-func exitCode(ts *testscript.TestScript, neg bool, args []string) {
-	if neg || len(args) < 2 {
-		ts.Fatalf("usage: exitcode CODE COMMAND [ARG...]")
-	}
-	want, err := strconv.Atoi(args[0])
-	ts.Check(err)
-	err = ts.Exec(args[1], args[2:]...)
-	got := 0
-	var exit *exec.ExitError
-	if errors.As(err, &exit) {
-		got = exit.ExitCode()
-	} else if err != nil {
-		ts.Fatalf("%v", err)
-	}
-	if got != want {
-		ts.Fatalf("exit code %d, want %d", got, want)
-	}
 }
 
 func TestScripts(t *testing.T) { runScripts(t, "scripts") }

@@ -183,13 +183,18 @@ func (l *Labels) readClasses(at cellAt, o LabelOptions) ([]Warning, error) {
 	}
 	if len(l.Names) == 1 && !o.AllowConstant {
 		t, row, col := at(0)
-		return nil, t.Fault(row, col, "L02", fmt.Sprintf("all %d labels are of one class", len(l.Rows)), "pass --allow-constant if that is meant")
+		what := fmt.Sprintf("all %d labels are of one class", len(l.Rows))
+		if len(l.Rows) == 1 {
+			what = "one label alone gives every row the same class"
+		}
+		return nil, t.Fault(row, col, "L02", what, "pass --allow-constant if that is meant")
 	}
 	alike, typos := alikeNames(l.Names, count)
 	if o.Strict && len(alike) > 0 {
 		return nil, fault.Inputf(alike[0].Code, "%s", alike[0].Text)
 	}
 	w := append(alike, typos...)
+	w = append(w, formulaNames(l.Names)...)
 	if o.NAHint {
 		w = append(w, missingNames(l.Names, count)...)
 	}
@@ -221,6 +226,25 @@ func alikeNames(names []string, count map[string]int) (alike, typos []Warning) {
 		}
 	}
 	return alike, typos
+}
+
+// formulaNames finds class names that a spreadsheet would run (X01, CWE-1236).
+func formulaNames(names []string) []Warning {
+	for _, name := range names {
+		if LooksLikeFormula([]byte(name)) {
+			return []Warning{{"X01", fmt.Sprintf("class %s would run as a formula in a spreadsheet; --spreadsheet-safe puts ' before it in the added columns", fault.Quote(name))}}
+		}
+	}
+	return nil
+}
+
+// LooksLikeFormula reports whether a spreadsheet would run a cell rather than show it.
+func LooksLikeFormula(cell []byte) bool {
+	if len(cell) == 0 || !strings.ContainsRune("=+-@\t\r", rune(cell[0])) {
+		return false
+	}
+	_, err := table.ParseNumber(cell, '.')
+	return err != nil
 }
 
 // missingNames finds class names that usually mean "no value" (L10).

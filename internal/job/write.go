@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"pinfill/internal/encode"
 	"pinfill/internal/fault"
 	"pinfill/internal/table"
 )
@@ -149,11 +150,7 @@ func spreadsheetSafe(cell func(int, []byte) []byte) func(int, []byte) []byte {
 	return func(row int, dst []byte) []byte {
 		start := len(dst)
 		dst = cell(row, dst)
-		text := dst[start:]
-		if len(text) == 0 || !strings.ContainsRune("=+-@\t\r", rune(text[0])) {
-			return dst
-		}
-		if _, err := table.ParseNumber(text, '.'); err == nil {
+		if !encode.LooksLikeFormula(dst[start:]) {
 			return dst
 		}
 		dst = append(dst, 0)
