@@ -133,3 +133,155 @@ store4:
 
 done4:
 	RET
+
+//	SI col   BX w   DX ptr   R8 excess   DI x   R9 own   R10 y   CX rows left   AX first entry of the row   R12 entries left
+
+// func csr1(col *int32, w *float64, ptr *int, excess, x, own, y *float64, rows int)
+TEXT ·csr1(SB), NOSPLIT, $0-64
+	MOVQ col+0(FP), SI
+	MOVQ w+8(FP), BX
+	MOVQ ptr+16(FP), DX
+	MOVQ excess+24(FP), R8
+	MOVQ x+32(FP), DI
+	MOVQ own+40(FP), R9
+	MOVQ y+48(FP), R10
+	MOVQ rows+56(FP), CX
+	MOVQ (DX), AX
+
+crow:
+	TESTQ    CX, CX
+	JZ       cdone
+	MOVSD    (R9), X8
+	MOVAPD   X8, X1
+	UNPCKLPD X1, X1 // x_i in each lane
+	XORPS    X0, X0 // even and odd sum
+	MOVQ     8(DX), R13
+	ADDQ     $8, DX
+	MOVQ     R13, R12
+	SUBQ     AX, R12
+	MOVQ     R13, AX
+	SUBQ     $2, R12
+	JLT      ctail
+
+cpair:
+	MOVL   (SI), R11
+	MOVL   4(SI), R13
+	MOVSD  (DI)(R11*8), X2
+	MOVHPD (DI)(R13*8), X2
+	MOVAPD X1, X3
+	SUBPD  X2, X3
+	MOVUPD (BX), X4
+	MULPD  X4, X3
+	ADDPD  X3, X0
+	ADDQ   $8, SI
+	ADDQ   $16, BX
+	SUBQ   $2, R12
+	JGE    cpair
+
+ctail:
+	ADDQ   $2, R12
+	JZ     cstore
+	MOVL   (SI), R11
+	MOVSD  (DI)(R11*8), X2
+	MOVAPD X8, X3
+	SUBSD  X2, X3
+	MULSD  (BX), X3
+	ADDSD  X3, X0
+	ADDQ   $4, SI
+	ADDQ   $8, BX
+
+cstore:
+	MOVAPD   X0, X2
+	UNPCKHPD X2, X2
+	ADDSD    X2, X0
+	MULSD    (R8), X8
+	ADDSD    X8, X0
+	MOVSD    X0, (R10)
+	ADDQ     $8, R8
+	ADDQ     $8, R9
+	ADDQ     $8, R10
+	DECQ     CX
+	JMP      crow
+
+cdone:
+	RET
+
+#define ENTRY64(COL, W, SUM, TUM) \
+	MOVL     COL(SI), R11        \
+	SHLQ     $5, R11             \
+	MOVUPD   (DI)(R11*1), X3     \
+	MOVUPD   16(DI)(R11*1), X4   \
+	MOVSD    W(BX), X7           \
+	UNPCKLPD X7, X7              \
+	MOVAPD   X1, X5              \
+	SUBPD    X3, X5              \
+	MOVAPD   X2, X6              \
+	SUBPD    X4, X6              \
+	MULPD    X7, X5              \
+	MULPD    X7, X6              \
+	ADDPD    X5, SUM             \
+	ADDPD    X6, TUM
+
+// func csr4(col *int32, w *float64, ptr *int, excess, x, own, y *float64, rows int)
+TEXT ·csr4(SB), NOSPLIT, $0-64
+	MOVQ col+0(FP), SI
+	MOVQ w+8(FP), BX
+	MOVQ ptr+16(FP), DX
+	MOVQ excess+24(FP), R8
+	MOVQ x+32(FP), DI
+	MOVQ own+40(FP), R9
+	MOVQ y+48(FP), R10
+	MOVQ rows+56(FP), CX
+	MOVQ (DX), AX
+
+crow4:
+	TESTQ  CX, CX
+	JZ     cdone4
+	MOVUPD (R9), X1 // the four vectors at i
+	MOVUPD 16(R9), X2
+	XORPS  X8, X8   // even sums
+	XORPS  X9, X9
+	XORPS  X10, X10 // odd sums
+	XORPS  X11, X11
+	MOVQ   8(DX), R13
+	ADDQ   $8, DX
+	MOVQ   R13, R12
+	SUBQ   AX, R12
+	MOVQ   R13, AX
+	SUBQ   $2, R12
+	JLT    ctail4
+
+cpair4:
+	ENTRY64(0, 0, X8, X9)
+	ENTRY64(4, 8, X10, X11)
+	ADDQ $8, SI
+	ADDQ $16, BX
+	SUBQ $2, R12
+	JGE  cpair4
+
+ctail4:
+	ADDQ $2, R12
+	JZ   cstore4
+	ENTRY64(0, 0, X8, X9)
+	ADDQ $4, SI
+	ADDQ $8, BX
+
+cstore4:
+	ADDPD    X10, X8
+	ADDPD    X11, X9
+	MOVSD    (R8), X7
+	UNPCKLPD X7, X7
+	MULPD    X7, X1
+	MULPD    X7, X2
+	ADDPD    X8, X1
+	ADDPD    X9, X2
+	MOVUPD   X1, (R10)
+	MOVUPD   X2, 16(R10)
+	ADDQ     $8, R8
+	ADDQ     $32, R9
+	ADDQ     $32, R10
+	DECQ     CX
+	JMP      crow4
+
+cdone4:
+	RET

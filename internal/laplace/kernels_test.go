@@ -4,6 +4,7 @@ import (
 	"context"
 	"math/rand/v2"
 	"testing"
+	"unsafe"
 )
 
 // TestKernelsAgreeToTheBit: assembly and Go, one vector and four.
@@ -27,6 +28,27 @@ func TestKernelsAgreeToTheBit(t *testing.T) {
 		l.apply(4, x, y4, lo, n)
 		quads := at(&l.quads[0], int(l.start[lo]))
 		rows4Go(quads, &l.start[lo], &l.tie[lo], &x[0], &x[4*lo], &z4[4*lo], n-lo)
+		a := &s.a.sddm
+		d4, e4, f4 := make([]float64, 4*n), make([]float64, 4*n), make([]float64, 4*n)
+		for i := range d4 {
+			d4[i] = r.NormFloat64()
+		}
+		col, w := unsafe.SliceData(a.col[a.ptr[lo]:]), unsafe.SliceData(a.w[a.ptr[lo]:])
+		a.apply(4, d4, e4, lo, n)
+		csr4Go(col, w, &a.ptr[lo], &a.excess[lo], &d4[0], &d4[4*lo], &f4[4*lo], n-lo)
+		for c := range 4 {
+			d1, e1, f1 := make([]float64, n), make([]float64, n), make([]float64, n)
+			for i := range n {
+				d1[i] = d4[4*i+c]
+			}
+			a.apply(1, d1, e1, lo, n)
+			csr1Go(col, w, &a.ptr[lo], &a.excess[lo], &d1[0], &d1[lo], &f1[lo], n-lo)
+			for i := range n {
+				if e1[i] != f1[i] || e1[i] != e4[4*i+c] || e1[i] != f4[4*i+c] {
+					t.Fatalf("row %d: one vector %v in Go %v, four %v in Go %v", i, e1[i], f1[i], e4[4*i+c], f4[4*i+c])
+				}
+			}
+		}
 		for c := range 4 {
 			x1, y1, z1 := make([]float32, n), make([]float32, n), make([]float32, n)
 			for i := range n {

@@ -12,6 +12,7 @@ const (
 	iterateCost   = 70  // a right-hand side by whichever iteration, per entry: for the choice of elimination
 	smallChange   = 2e5 // work too small to weigh
 
+	treeLike     = 3       // entries a row up to which elimination is planned whatever the size
 	planAlways   = 2000    // rows up to which elimination is planned for a single right-hand side
 	planMany     = 30_000  // and for many
 	planRescue   = 300_000 // and where nothing else has converged
@@ -181,7 +182,7 @@ func (s *System) makePlan(ctx context.Context, most int) error {
 // eliminationPays says whether elimination is expected to be quicker than iterations for rhs right-hand sides.
 func (s *System) eliminationPays(ctx context.Context, rhs int) (bool, error) {
 	n, nnz := s.a.n, len(s.a.col)
-	if n > planMany || n > planAlways && rhs < manyColumns {
+	if nnz > treeLike*n && (n > planMany || n > planAlways && rhs < manyColumns) {
 		return false, nil
 	}
 	if err := s.makePlan(ctx, iterateCost/2*nnz+n); err != nil {
@@ -222,12 +223,17 @@ func summary(columns []column, before []int) Stats {
 	return total
 }
 
-// tooSlow predicts from the fall of the residual so far whether Jacobi will take longer than multigrid.
+// tooSlow predicts from the fall of the residual so far whether Jacobi will take longer than multigrid. Conjugate
+// gradients quicken once they have found the few smallest eigenvalues, so that an early forecast must be far worse.
 func tooSlow(iteration int, c *column, rr, tol float64) bool {
 	if iteration < 12 || iteration%4 != 0 {
 		return false
 	}
+	margin := 1.0
+	if iteration < 36 {
+		margin = 3
+	}
 	fall := math.Log(c.first/rr) / float64(iteration)
 	left := math.Log(rr / (tol * tol * c.bb))
-	return !(left <= 0) && !(left/fall*jacobiStep <= multigridCost) || fall <= 0
+	return left > 0 && !(fall > 0 && left/fall*jacobiStep <= margin*multigridCost)
 }
