@@ -32,12 +32,15 @@ func (s *Solver) certificate(x point, values []float64, c enclosure, ok bool) Ce
 // vertices. It polishes a copy in extended precision, encloses the minimiser, and measures the given values against
 // the enclosure; wrong values widen the result or leave it NaN.
 func (s *Solver) Certify(ctx context.Context, values []float64, tolerance float64) (Certificate, error) {
-	s.counts = Counts{}
+	s.counts, s.eps = Counts{}, 0
+	if s.p < 2 {
+		s.eps = leastSmoothing
+	}
 	f := append([]float64(nil), values...)
 	w := s.newWork()
 	x := point{f: f, h: make([]float64, s.n)}
 	for range 30 {
-		step, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 0, 1e-6, 1, true)
+		step, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, 0, 1e-6, 1, true)
 		if err != nil {
 			return Certificate{}, err
 		}

@@ -27,7 +27,7 @@ type enclosure struct {
 // could be verified within the width allowed.
 func (s *Solver) enclose(ctx context.Context, x point, w *work, allowed float64) (enclosure, bool, error) {
 	s.differences(x, w.d)
-	s.linearise(w, s.p, s.smoothing(), rowPad)
+	s.linearise(w, s.p, s.eps, rowPad)
 	// The excess asked of each row: the imbalance there, its rounding, and a share that makes psi bend
 	// downwards everywhere by more than the linear solver's own error.
 	spread := parallel.Max(s.workers, s.n, rowChunk, func(lo, hi int) float64 {

@@ -13,6 +13,7 @@ type work struct {
 	lc     []float64 // ln of the Hessian weight, by edge
 	rowMax []float64 // largest lc at each vertex
 	b, x   []float64 // right-hand side, scaled as engine says, and step
+	upset  [][]int32 // vertices far out of balance, by chunk of rows
 }
 
 func (s *Solver) newWork() *work {
@@ -20,6 +21,7 @@ func (s *Solver) newWork() *work {
 	return &work{
 		d: make([]float64, m), dx: make([]float64, m), lc: make([]float64, m),
 		rowMax: make([]float64, s.n), b: make([]float64, s.n), x: make([]float64, s.n),
+		upset: make([][]int32, (s.n+rowChunk-1)/rowChunk),
 	}
 }
 
@@ -59,6 +61,8 @@ func (s *Solver) linearise(w *work, p, eps, pad float64) (imbalance float64) {
 	})
 	imbalance = parallel.Max(s.workers, s.n, rowChunk, func(lo, hi int) float64 {
 		var worst float64
+		upset := w.upset[lo/rowChunk][:0]
+		defer func() { w.upset[lo/rowChunk] = upset }()
 		for v := lo; v < hi; v++ {
 			w.b[v] = 0
 			if s.isFixed[v] {
@@ -77,6 +81,9 @@ func (s *Solver) linearise(w *work, p, eps, pad float64) (imbalance float64) {
 			w.b[v] = -net
 			if sum > 0 {
 				worst = max(worst, math.Abs(net)/sum)
+				if math.Abs(net) > 0.3*sum {
+					upset = append(upset, int32(v))
+				}
 			}
 		}
 		return worst
@@ -161,6 +168,17 @@ func (s *Solver) iterate(ctx context.Context, x point, w *work, p, eps, pad, sto
 	for range limit {
 		s.differences(x, w.d)
 		s.linearise(w, p, eps, pad)
+		if p == s.p && p > 4 {
+			var queue []int32
+			for _, u := range w.upset {
+				queue = append(queue, u...)
+			}
+			if len(queue) > 0 && len(queue) < 10+s.n/20 {
+				s.relax(x, queue, 20*len(queue))
+				s.differences(x, w.d)
+				s.linearise(w, p, eps, pad)
+			}
+		}
 		if err := s.engine.solve(ctx, w.lc, w.rowMax, w.b, w.x, tolerance); err != nil {
 			return last, err
 		}

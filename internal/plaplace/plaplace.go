@@ -44,8 +44,6 @@ type Certificate struct {
 // Result is what Solve found.
 type Result struct {
 	Values      []float64 // one a vertex; the given values at fixed vertices
-	Lower       []float64 // verified bounds, Lower <= minimiser <= Upper vertex by vertex, before rounding to float64;
-	Upper       []float64 // nil where no enclosure was verified
 	Certificate Certificate
 	Counts      Counts
 }
@@ -68,6 +66,7 @@ type Solver struct {
 	eu, ev  []int32 // ends of each edge, eu < ev
 	ea      []float64
 	engine  engine
+	eps     float64 // differences count as at least this, p < 2 only
 	counts  Counts
 }
 

@@ -61,3 +61,12 @@ func (x point) sum(v int) float64 {
 	}
 	return x.f[v] + x.h[v]
 }
+
+// move adds t to the value at v: to h if there is one, else to f, within [0, 1].
+func (x point) move(v int32, t float64) {
+	if x.h != nil {
+		x.h[v] += t
+	} else {
+		x.f[v] = min(max(x.f[v]+t, 0), 1)
+	}
+}

@@ -2,27 +2,19 @@ package plaplace
 
 import (
 	"context"
-	"math"
 )
 
 const (
 	rowPad      = 1e-10 // least conductance of a Newton system, over the largest of its row
 	spreadShare = 1e-3
+	loose       = 1e-2 // tolerance of the linear systems while far from the minimiser
 	widest      = 1e-6 // no enclosure wider than this is looked for, a share of the range
 )
-
-// smoothing is the eps under which differences count as this size, p < 2 only.
-func (s *Solver) smoothing() float64 {
-	if s.p < 2 {
-		return 1e-15
-	}
-	return 0
-}
 
 // Solve finds the minimiser with the given values, in [0, 1], at the fixed vertices. start is a guess, one value a
 // vertex, or nil; with a guess p is not approached step by step. tolerance is the width to be certified.
 func (s *Solver) Solve(ctx context.Context, values, start []float64, tolerance float64) (Result, error) {
-	s.counts = Counts{}
+	s.counts, s.eps = Counts{}, 0
 	f := make([]float64, s.n)
 	if start != nil {
 		copy(f, start)
@@ -45,75 +37,96 @@ func (s *Solver) Solve(ctx context.Context, values, start []float64, tolerance f
 // Selesnick 1994), or, for p < 2, by decreasing smoothing.
 func (s *Solver) descend(ctx context.Context, x point, w *work, warm bool) error {
 	if !warm {
-		if _, err := s.iterate(ctx, x, w, 2, 0, rowPad, 0, 1e-6, 1, false); err != nil {
+		tolerance := 1e-3
+		if s.p == 2 {
+			tolerance = 1e-8
+		}
+		if _, err := s.iterate(ctx, x, w, 2, 0, rowPad, 0, tolerance, 1, false); err != nil || s.p == 2 {
 			return err
 		}
-		for p := 2.0; p < s.p; {
-			p = min(s.p, 1.5*p)
-			limit := 30
-			if _, err := s.iterate(ctx, x, w, p, 0, rowPad, 1e-3, 1e-3, limit, false); err != nil {
+		for p := 1.5 * 2.0; p < s.p; p *= 1.5 {
+			if _, err := s.iterate(ctx, x, w, p, 0, rowPad, 0.1, loose, 30, false); err != nil {
 				return err
 			}
 		}
 	}
 	if s.p < 2 {
-		for eps := 0.1; eps > 1e-15; eps *= 0.1 {
-			if _, err := s.iterate(ctx, x, w, s.p, eps, rowPad, max(eps*1e-2, 1e-13), 1e-4, 30, false); err != nil {
+		for s.eps = 1e-2; s.eps > leastSmoothing; s.eps *= 1e-2 {
+			if _, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, 10*s.eps, loose, 30, false); err != nil {
 				return err
 			}
 		}
+		s.eps = leastSmoothing
 	}
-	_, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 1e-9, 1e-4, 60, false)
+	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, 1e-4, loose, 60, false)
 	return err
 }
+
+// leastSmoothing is the eps, for p < 2, at which the answer is first certified.
+const leastSmoothing = 1e-15
 
 // finish polishes f in extended precision and certifies it. Where that misses the tolerance and the system is small,
 // the nodal form gets a turn.
 func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance float64) (Result, error) {
 	x := point{f: f, h: make([]float64, s.n)}
-	if err := s.polish(ctx, x, w, 6); err != nil {
-		return Result{Values: f, Counts: s.counts}, err
-	}
-	c, ok, err := s.enclose(ctx, x, w, max(widest, 100*tolerance))
-	if eng, small := s.engine.(*dense); small && s.p > 2 && err == nil && !(ok && c.width <= tolerance) {
+	allowed := max(widest, 100*tolerance)
+	var c enclosure
+	var cert Certificate
+	var values []float64
+	round := func() {
+		values = make([]float64, s.n)
 		for v := range f {
-			f[v] = min(max(x.sum(v), 0), 1)
+			values[v] = min(max(x.sum(v), 0), 1)
 		}
-		clear(x.h)
-		err = s.nodal(ctx, point{f: f}, w, eng, 60)
-		if err == nil {
-			err = s.nodal(ctx, x, w, eng, 8)
+		for _, v := range s.fixed {
+			values[v] = f[v]
 		}
-		if err == nil {
-			c, ok, err = s.enclose(ctx, x, w, max(widest, 100*tolerance))
+	}
+	attempt := func(improve func() error) error {
+		if err := improve(); err != nil {
+			return err
 		}
+		var ok bool
+		var err error
+		if c, ok, err = s.enclose(ctx, x, w, allowed); err == nil {
+			round()
+			cert = s.certificate(x, values, c, ok)
+		}
+		return err
+	}
+	polish := func() error { return s.polish(ctx, x, w, 12) }
+	err := attempt(polish)
+	missed := func() bool {
+		return err == nil && !(cert.Width <= tolerance && cert.Gap <= min(tolerance, 1e-9))
+	}
+	if missed() {
+		err = attempt(polish)
+	}
+	for ; missed() && s.p < 2 && s.eps > 1e-40; s.eps *= 1e-5 {
+		err = attempt(polish)
+	}
+	if eng, small := s.engine.(*dense); small && s.p > 2 && missed() {
+		err = attempt(func() error {
+			round()
+			copy(f, values)
+			clear(x.h)
+			if err := s.nodal(ctx, point{f: f}, w, eng, 60); err != nil {
+				return err
+			}
+			return s.nodal(ctx, x, w, eng, 8)
+		})
 	}
 	if err != nil {
 		return Result{Values: f, Counts: s.counts}, err
 	}
-	res := Result{Values: make([]float64, s.n), Counts: s.counts}
-	for v := range f {
-		res.Values[v] = min(max(x.sum(v), 0), 1)
-	}
-	for _, v := range s.fixed {
-		res.Values[v] = f[v]
-	}
-	res.Certificate = s.certificate(x, res.Values, c, ok)
-	return res, nil
+	return Result{Values: values, Certificate: cert, Counts: s.counts}, nil
 }
 
-// polish takes up to limit Newton steps that go to x.h, until they no longer shrink.
+// polish takes up to limit Newton steps that go to x.h, until one is so short that the next would be below rounding.
 func (s *Solver) polish(ctx context.Context, x point, w *work, limit int) error {
-	last := math.Inf(1)
-	for range limit {
-		step, err := s.iterate(ctx, x, w, s.p, s.smoothing(), rowPad, 0, 1e-5, 1, true)
-		if err != nil {
-			return err
-		}
-		if step < 1e-15 || step > 0.5*last && step < 1e-10 {
-			break
-		}
-		last = step
-	}
-	return nil
+	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, polished, 1e-5, limit, true)
+	return err
 }
+
+// polished is a step after which Newton's method, with systems solved to 1e-5, leaves an error far below tolerance.
+const polished = 1e-8
