@@ -162,6 +162,48 @@ func TestEstimatesAreUnbiasedWithHonestErrors(t *testing.T) {
 	}
 }
 
+// The estimators against their formulas, written out for few points: the likelihood by its mean of logarithms, TwoNN by
+// the line through the smallest nine tenths of the ratios.
+func TestEstimatesByTheirFormulas(t *testing.T) {
+	for seed := range uint64(30) {
+		l := ideal(seed, 10+int(seed), 6, 3)
+		r, err := Estimate(l, Options{Ks: []int{6, 3, 99}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if len(r.Likelihood) != 2 {
+			t.Fatalf("estimates at %+v", r.Likelihood)
+		}
+		for j, k := range []int{3, 6} {
+			var sum float64
+			for i := range l.N {
+				_, dist := l.Row(i)
+				for _, d := range dist[:k-1] {
+					sum += math.Log(dist[k-1]/d) / float64(k-1)
+				}
+			}
+			if want := float64(l.N) / sum; r.Likelihood[j].K != k || math.Abs(r.Likelihood[j].Value-want) > 1e-12*want {
+				t.Errorf("seed %d: likelihood %+v, want %v", seed, r.Likelihood[j], want)
+			}
+		}
+		mu := make([]float64, l.N)
+		for i := range mu {
+			_, dist := l.Row(i)
+			mu[i] = dist[1] / dist[0]
+		}
+		slices.Sort(mu)
+		var xy, xx float64
+		for i, m := range mu[:9*l.N/10] {
+			x, y := math.Log(m), -math.Log(1-float64(i+1)/float64(l.N))
+			xy += x * y
+			xx += x * x
+		}
+		if want := xy / xx; math.Abs(r.TwoNN.Value-want) > 1e-12*want {
+			t.Errorf("seed %d: TwoNN %v, want %v", seed, r.TwoNN.Value, want)
+		}
+	}
+}
+
 // Rounded coordinates: TwoNN is set aside and the shells find the dimension that the likelihood may miss.
 func TestRoundedData(t *testing.T) {
 	grid := func(d, side int) *points.Matrix {

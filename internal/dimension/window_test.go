@@ -50,6 +50,8 @@ func TestJudge(t *testing.T) {
 		{"many", 10000, at(2, 2, 2), 50, 3, false, []Reason{TooManyNeighbours}},
 		{"p = 2 on a plane", 10000, at(2, 2, 2), 10, 2, false, []Reason{PBelowDimension}},
 		{"both", 10000, at(2, 2, 2), 5, 1.5, false, []Reason{TooFewNeighbours, PBelowDimension}},
+		{"just empty", 1000, at(5, 5, 5), 10, 6.75, false, []Reason{EmptyWindow}},
+		{"just open", 1000, at(5, 5, 5), 7, 7.1, true, nil},
 		{"empty", 1000, at(5, 5, 5), 10, 6, false, []Reason{EmptyWindow}},
 		{"loose", 10000, at(2, 1.5, 3.5), 10, 3, true, []Reason{DimensionUncertain}},
 	} {

@@ -98,7 +98,7 @@ func TestFromEdgesNamesTheFirstConflict(t *testing.T) {
 
 func TestFromEdgesRefuses(t *testing.T) {
 	good := Edge{0, 1, 1}
-	for _, bad := range []Edge{{-1, 1, 1}, {0, 3, 1}, {3, 3, 1}, {0, 1, 0}, {0, 1, -1}, {0, 1, math.NaN()}, {0, 1, math.Inf(1)}, {2, 2, 0}} {
+	for _, bad := range []Edge{{-1, 1, 1}, {0, -1, 1}, {0, 3, 1}, {3, 3, 1}, {0, 1, 0}, {0, 1, -1}, {0, 1, math.NaN()}, {0, 1, math.Inf(1)}, {2, 2, 0}} {
 		_, _, err := FromEdges(3, []Edge{good, bad, {0, 1, math.NaN()}}, 0)
 		var e *EdgeError
 		if !errors.As(err, &e) || e.Position != 1 || e.Error() == "" {

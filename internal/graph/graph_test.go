@@ -129,6 +129,47 @@ func TestFromListsIsTheUnionOfLists(t *testing.T) {
 	}
 }
 
+// Permuted rows give the same graph bit for bit, and each row the same vertex, with ties and with copies.
+func TestRowOrderDoesNotReachTheGraph(t *testing.T) {
+	build := func(m *points.Matrix) (*points.Space, *sparse.CSR) {
+		s, err := points.Prepare(context.Background(), m, points.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		g, err := FromLists(nearest(t, s.Points, 6), 6, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		w, err := g.LogWeights(Gaussian, Bandwidth{Local: true, H: 1}, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return s, w
+	}
+	for seed := range uint64(20) {
+		rng := rand.New(rand.NewPCG(seed, 99))
+		m := points.NewMatrix(120, 3)
+		for i := range m.Data {
+			m.Data[i] = float64(rng.IntN(5))
+		}
+		s, w := build(m)
+		moved := points.NewMatrix(m.N, m.D)
+		perm := rng.Perm(m.N)
+		for i, from := range perm {
+			copy(moved.Row(i), m.Row(from))
+		}
+		s2, w2 := build(moved)
+		if !same(w, w2) {
+			t.Fatalf("seed %d: the graph depends on the order of rows", seed)
+		}
+		for i, from := range perm {
+			if s2.Vertex[i] != s.Vertex[from] {
+				t.Fatalf("seed %d: row %d moved to another vertex", seed, from)
+			}
+		}
+	}
+}
+
 func TestFromListsRefuses(t *testing.T) {
 	good := func() *neighbors.Lists {
 		return &neighbors.Lists{N: 3, K: 2, Index: []int32{1, 2, 0, 2, 1, 0}, Dist: []float64{1, 2, 1, 3, 3, 3}}

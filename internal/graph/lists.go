@@ -12,8 +12,8 @@ import (
 // k of i's list or i among the first k of j's; 1 <= k <= l.K. One search with a large K serves every smaller k, and
 // with K >= LocalRank they all have the same own scales. The error says that k or the lists are out of order.
 //
-// workers = 0 means GOMAXPROCS. Memory: 12 bytes an entry of the answer (2 to 2.6 k entries a vertex at most, about
-// 1.2 k on points of few dimensions), 16 bytes a vertex, and for a while 4 + 8 ceil(k/64) more.
+// workers = 0 means GOMAXPROCS. Memory: 12 bytes an entry of the answer (2 k entries a vertex at most on average, about
+// 1.15 k on points of few dimensions), 16 bytes a vertex, and for a while 4 + 8 ceil(k/64) more.
 func FromLists(l *neighbors.Lists, k, workers int) (*Graph, error) {
 	if k < 1 || k > l.K {
 		return nil, fmt.Errorf("graph of %d neighbours from lists of %d", k, l.K)

@@ -174,7 +174,7 @@ func TestWindowCandidates(t *testing.T) {
 		pts := cloud(t, seed, 300, 2, 0)
 		g, _ := FromLists(nearest(t, pts, 8), 8, 0)
 		for _, local := range []bool{false, true} {
-			for _, p := range []float64{1.5, 2, 3, 8, math.Inf(1)} {
+			for _, p := range []float64{1.5, 2, 3, 8, math.Inf(1), math.NaN()} {
 				w := g.BandwidthWindow(2, p, local, 8, 0)
 				if len(w.Candidates) != 8 || !slices.IsSorted(w.Candidates) {
 					t.Fatalf("candidates %v", w.Candidates)

@@ -14,7 +14,7 @@ type Window struct {
 	Connect float64 // longest edge of the minimum spanning forest of the skeleton: at smaller h a compact kernel disconnects
 	Typical float64 // median edge of that forest
 	Longest float64 // longest edge of the skeleton: at h far above, all weights are alike and h no longer matters
-	High    float64 // where n^(-1/p) falls: above, p is too small for labels to reach far (+Inf at p = inf)
+	High    float64 // where n^(-1/p) falls: above, p is too small for labels to reach far; +Inf at p = inf, NaN if dim is
 	// Candidates are log-spaced, ascending: from Connect to High where the window is open, kept within
 	// [Typical/2, 2 Longest], the range in which h changes the weights of this graph. Empty for a graph without edges.
 	Candidates []float64
@@ -55,7 +55,11 @@ func (g *Graph) BandwidthWindow(dim, p float64, local bool, count, workers int) 
 		w.High = math.Inf(1)
 	}
 	least, most := w.Typical/2, 2*w.Longest
-	from, to := clamp(w.Connect, least, most), clamp(w.High, least, most)
+	high := w.High
+	if math.IsNaN(high) {
+		high = most
+	}
+	from, to := clamp(w.Connect, least, most), clamp(high, least, most)
 	if from > to {
 		from, to = to, from
 	}
