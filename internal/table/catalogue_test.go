@@ -336,6 +336,32 @@ func TestInputFiles(t *testing.T) {
 	}
 }
 
+// TestSilentPipe: a reader that waits for its writer ends with its context, before the header and after it.
+func TestSilentPipe(t *testing.T) {
+	for _, text := range []string{"", "a,b\n" + strings.Repeat("1,2\n", 3000)} {
+		r, w := io.Pipe()
+		ctx, cancel := context.WithCancelCause(context.Background())
+		cause := errors.New("enough")
+		go func() {
+			io.WriteString(w, text)
+			cancel(cause)
+		}()
+		if _, err := Read(ctx, "-", r, Options{block: 64}); err != cause {
+			t.Errorf("%v, want the context's cause", err)
+		}
+		r.Close()
+	}
+}
+
+func TestOptionsRefused(t *testing.T) {
+	for _, o := range []Options{{Delimiter: '"'}, {Delimiter: '\n'}, {Delimiter: '.'}, {Delimiter: '5'}, {Delimiter: 'E'}, {Delimiter: 0xc3}, {Decimal: ';'}} {
+		_, err := readText("a\n1\n", o)
+		if e := firstFault(err); e == nil || e.Exit != 64 {
+			t.Errorf("%+v: %v, want exit 64", o, err)
+		}
+	}
+}
+
 // TestChangedInput lets a file grow between two reads.
 func TestChangedInput(t *testing.T) {
 	path := filepath.Join(t.TempDir(), "t.csv")

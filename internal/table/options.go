@@ -1,6 +1,10 @@
 package table
 
-import "strings"
+import (
+	"strings"
+
+	"pinfill/internal/fault"
+)
 
 // Options say how a table is read. The zero value reads a comma-separated table with a header and the stated caps.
 type Options struct {
@@ -58,6 +62,17 @@ func (o Options) withDefaults(name string) Options {
 		o.block = blockSize
 	}
 	return o
+}
+
+// check refuses delimiters and decimal signs that would make a table ambiguous.
+func (o Options) check() error {
+	if d := o.Delimiter; d >= 0x80 || strings.IndexByte("\"\r\n.+-", d) >= 0 || d-'0' <= 9 || d|0x20 >= 'a' && d|0x20 <= 'z' {
+		return fault.Usagef("P09", "--delimiter %q cannot part cells: take a comma, semicolon, tab, bar or another sign that no number holds", d)
+	}
+	if o.Decimal != '.' && o.Decimal != ',' {
+		return fault.Usagef("P09", "--decimal %q is neither a full stop nor a comma", o.Decimal)
+	}
+	return nil
 }
 
 // delimiterByName gives a tab for .tsv names, compressed or not, and a comma for all others.

@@ -8,6 +8,7 @@ import (
 	"hash"
 	"io"
 	"io/fs"
+	"sync/atomic"
 	"time"
 
 	"pinfill/internal/fault"
@@ -26,11 +27,11 @@ type source struct {
 	packed string // "gzip", "zstd" or ""
 	size   int64  // bytes of text where it is known before reading, else -1
 
-	file  File      // nil for standard input
-	stat  [2]any    // size and modification time when opened, to notice a change
-	zstd  io.Closer // nil unless packed with zstd
-	bytes int64     // stored bytes read so far
-	hash  hash.Hash // of the stored bytes; nil where the caller keeps the bytes and hashes them itself
+	file  File         // nil for standard input
+	stat  [2]any       // size and modification time when opened, to notice a change
+	zstd  io.Closer    // nil unless packed with zstd
+	bytes atomic.Int64 // stored bytes read so far
+	hash  hash.Hash    // of the stored bytes; nil where the caller keeps the bytes and hashes them itself
 }
 
 // openSource opens name, or takes stdin for "-", and looks through gzip and zstd by content.
@@ -138,11 +139,11 @@ func (s *source) finish() error {
 		return unreadable(s.name, err)
 	}
 	size, modified := s.stat[0].(int64), s.stat[1].(time.Time)
-	if info.Size() == size && info.ModTime().Equal(modified) && s.bytes == size {
+	if info.Size() == size && info.ModTime().Equal(modified) && s.bytes.Load() == size {
 		return nil
 	}
-	found := fmt.Sprintf("it had %d bytes at the start, %d were read and it has %d now", size, s.bytes, info.Size())
-	if info.Size() == size && s.bytes == size {
+	found := fmt.Sprintf("it had %d bytes at the start, %d were read and it has %d now", size, s.bytes.Load(), info.Size())
+	if info.Size() == size && s.bytes.Load() == size {
 		found = "its modification time moved"
 	}
 	return &fault.Error{Exit: fault.Input, Code: "S17", File: s.name, Message: "the file changed while it was read: " + found, Hint: "run again when nothing writes to it"}
@@ -171,7 +172,7 @@ type storedReader struct {
 
 func (r *storedReader) Read(p []byte) (int, error) {
 	n, err := r.in.Read(p)
-	r.s.bytes += int64(n)
+	r.s.bytes.Add(int64(n))
 	if r.s.hash != nil {
 		r.s.hash.Write(p[:n])
 	}

@@ -21,11 +21,10 @@ type Stream struct {
 	stop  context.CancelFunc
 	gone  chan struct{} // closed when the reading goroutine has ended
 
-	rows   int64
-	lines  int          // before the next block
-	blank  *fault.Error // blank lines that end the last batch: wrong if a row follows
-	err    error        // what Next gives from now on
-	finish sync.Once
+	rows  int64
+	lines int          // before the next block
+	blank *fault.Error // blank lines that end the last batch: wrong if a row follows
+	err   error        // what Next gives from now on
 }
 
 // work is one piece under way.
@@ -48,22 +47,54 @@ func openStream(ctx context.Context, name string, stdin io.Reader, o Options, ha
 	o = o.withDefaults(name)
 	h.delim, h.decimal, h.workers, h.memory = o.Delimiter, o.Decimal, parallel.Workers(o.Workers), o.Memory
 	h.maxField, h.maxRows = o.MaxField, o.MaxRows
+	if err := o.check(); err != nil {
+		return nil, err
+	}
 	for _, text := range o.NA {
 		h.na = append(h.na, trimSpace([]byte(text)))
 	}
-	src, err := openSource(name, stdin, o, hashed)
+	s := &Stream{head: h}
+	r, err := s.open(ctx, stdin, &o, hashed)
 	if err != nil {
-		return nil, err
-	}
-	s := &Stream{head: h, src: src}
-	first, cut, err := s.begin(&o)
-	if err != nil {
-		src.close()
 		return nil, err
 	}
 	s.ctx, s.stop = context.WithCancel(ctx)
-	s.start(s.ctx, first, cut)
+	s.start(s.ctx, r.first, r.cut)
 	return s, nil
+}
+
+// opened is what open has found.
+type opened struct {
+	src   *source
+	first *piece // begins with the first row
+	cut   *cutter
+	err   error
+}
+
+// open opens the source and reads the header. It returns when ctx ends even where a pipe still waits for its writer.
+func (s *Stream) open(ctx context.Context, stdin io.Reader, o *Options, hashed bool) (opened, error) {
+	done := make(chan opened, 1)
+	go func() {
+		var r opened
+		if r.src, r.err = openSource(s.head.name, stdin, *o, hashed); r.err == nil {
+			s.src = r.src
+			if r.first, r.cut, r.err = s.begin(o); r.err != nil {
+				r.src.close()
+			}
+		}
+		done <- r
+	}()
+	select {
+	case r := <-done:
+		return r, r.err
+	case <-ctx.Done():
+		go func() {
+			if r := <-done; r.err == nil {
+				r.src.close()
+			}
+		}()
+		return opened{}, context.Cause(ctx)
+	}
 }
 
 // begin reads the header and gives the piece that follows it.
@@ -120,8 +151,8 @@ func (s *Stream) afterHead(p piece, cut *cutter, o *Options) (*piece, *cutter, e
 
 func (s *Stream) empty(blank int) error {
 	message := "the file is empty: 0 bytes"
-	if s.src.bytes > 0 || blank > 0 {
-		message = fmt.Sprintf("no header and no rows: %d bytes that hold no text", s.src.bytes)
+	if s.src.bytes.Load() > 0 || blank > 0 {
+		message = fmt.Sprintf("no header and no rows: %d bytes that hold no text", s.src.bytes.Load())
 	}
 	return &fault.Error{Exit: fault.Input, Code: "C18", File: s.head.name, Message: message, Hint: "check the step that writes it"}
 }
@@ -142,6 +173,7 @@ func (s *Stream) start(ctx context.Context, first *piece, cut *cutter) {
 	}
 	go func() {
 		defer close(s.gone)
+		defer s.src.close()
 		defer scanning.Wait()
 		defer close(s.order)
 		defer close(todo)
@@ -279,18 +311,17 @@ func merge(a, b *fault.List) {
 func (s *Stream) Head() *Table { return &Table{head: s.head} }
 
 // Bytes gives the number of bytes read as stored; final once Next has given io.EOF.
-func (s *Stream) Bytes() int64 { return s.src.bytes }
+func (s *Stream) Bytes() int64 { return s.src.bytes.Load() }
 
 // SHA256 gives the hash of the stored bytes; final once Next has given io.EOF.
 func (s *Stream) SHA256() [32]byte { return s.src.sum() }
 
-// Close ends the reading and closes the file. It may be called more than once.
+// Close ends the reading and closes the file. It may be called more than once. It does not wait for standard input,
+// whose writer may have nothing to say for long.
 func (s *Stream) Close() {
-	s.finish.Do(func() {
-		s.stop()
-		for range s.order { // let go of a reader that waits
-		}
+	s.stop()
+	if s.src.file != nil {
+		s.src.file.Close() // wakes a read that waits; the reading goroutine closes the rest
 		<-s.gone
-		s.src.close()
-	})
+	}
 }

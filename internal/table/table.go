@@ -77,7 +77,7 @@ func Read(ctx context.Context, name string, stdin io.Reader, o Options) (*Table,
 			if t.packed {
 				code = "X04"
 			}
-			return nil, overMemory(h, code, fmt.Sprintf("%d bytes of input have grown to %d in memory", s.src.bytes, held))
+			return nil, overMemory(h, code, fmt.Sprintf("%d bytes of input have grown to %d in memory", s.src.bytes.Load(), held))
 		}
 		if refused.Total == 0 {
 			t.blocks = append(t.blocks, b)
@@ -86,7 +86,7 @@ func Read(ctx context.Context, name string, stdin io.Reader, o Options) (*Table,
 	if err := single(&refused); err != nil {
 		return nil, err
 	}
-	t.rows, t.bytes = int(s.rows), s.src.bytes
+	t.rows, t.bytes = int(s.rows), s.src.bytes.Load()
 	if t.packed {
 		t.sum = s.src.sum()
 	}
