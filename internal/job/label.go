@@ -21,6 +21,7 @@ type labelled struct {
 	chosen  *choose.Score
 	bridged []bool // by vertex, nil when none is
 	result  *encode.Result
+	keep    *kept // what confidence rests on; nil when labels are too few
 	record  *Record
 }
 

@@ -83,6 +83,15 @@ func (r *run) tethered(d *data, v *vertices, w *sparse.CSR) (*sparse.CSR, choose
 	return g, t, nil
 }
 
+// problem is the solver's view of a field.
+func (r *run) problem(f *field, p float64) solve.Problem {
+	return solve.Problem{Graph: f.graph, P: p, Energy: r.Energy}
+}
+
+func (r *run) solveSettings() solve.Settings {
+	return solve.Settings{Tolerance: r.Tolerance, Workers: r.Workers}
+}
+
 // takeScores keeps the chosen solution and its certificates.
 func (r *run) takeScores(d *data, f *field, s *choose.Score) error {
 	f.scores = make([][]float64, len(s.Fields))

@@ -1,0 +1,106 @@
+package job
+
+import (
+	"encoding/json"
+	"errors"
+	"math"
+
+	"pinfill/internal/choose"
+	"pinfill/internal/fault"
+	"pinfill/internal/trust"
+)
+
+// kept is what a run keeps to judge rows: in memory for its own rows, in the model file for new ones.
+type kept struct {
+	Weights  choose.Weights        `json:"weights,omitempty"`
+	Evidence *trust.ClassEvidence  `json:"evidence,omitempty"`
+	Numbers  *trust.NumberEvidence `json:"numbers,omitempty"`
+	Coverage float64               `json:"coverage"`
+	Drawn    trust.Drawn           `json:"drawn"`
+	Distance []float64             `json:"-"` // of labelled vertices to the nearest other labelled one
+
+	calibration *trust.Calibration
+	sets        *trust.Sets
+	intervals   *trust.Intervals
+	spread      []float64 // by vertex; numbers only
+}
+
+// ready fits what the evidence allows.
+func (k *kept) ready() error {
+	var err error
+	if k.Numbers != nil {
+		k.intervals, err = trust.NewIntervals(*k.Numbers, trust.IntervalSettings{Coverage: k.Coverage, Drawn: k.Drawn})
+		return err
+	}
+	if k.Evidence == nil {
+		return trust.ErrNoEvidence
+	}
+	if k.calibration, err = trust.FitCalibration(*k.Evidence); err != nil {
+		return err
+	}
+	k.sets, err = trust.NewSets(k.calibration, trust.SetSettings{Coverage: k.Coverage, Drawn: k.Drawn})
+	return err
+}
+
+// class gives the confidence and the set of one row from its class scores; prob is scratch, one a class.
+func (k *kept) class(prob []float64, score func(int) float64) (confidence float64, set []int32) {
+	weighted(prob, k.Weights, score)
+	k.calibration.Probabilities(prob, prob)
+	if math.IsNaN(prob[0]) {
+		return math.NaN(), nil
+	}
+	for _, p := range prob {
+		confidence = max(confidence, p)
+	}
+	return confidence, k.sets.Of(nil, prob)
+}
+
+// MarshalJSON and UnmarshalJSON keep numbers that JSON has no word for (a label without a left-out answer).
+func (k *kept) encode() ([]byte, error) {
+	if k == nil {
+		return nil, nil
+	}
+	plain := struct {
+		Weights  []Number   `json:"weights,omitempty"`
+		LeftOut  [][]Number `json:"left_out,omitempty"`
+		Given    []int      `json:"given,omitempty"`
+		Values   []Number   `json:"values,omitempty"`
+		Answers  []Number   `json:"answers,omitempty"`
+		Spread   []Number   `json:"spread,omitempty"`
+		Coverage float64    `json:"coverage"`
+		Drawn    int        `json:"drawn"`
+	}{Weights: numbers(k.Weights), Coverage: k.Coverage, Drawn: int(k.Drawn)}
+	if e := k.Evidence; e != nil {
+		plain.Given = e.Given
+		for _, s := range e.LeftOut {
+			plain.LeftOut = append(plain.LeftOut, numbers(s))
+		}
+	}
+	if e := k.Numbers; e != nil {
+		plain.Values, plain.Answers, plain.Spread = numbers(e.Given), numbers(e.LeftOut), numbers(e.Spread)
+	}
+	return json.Marshal(plain)
+}
+
+func numbers(v []float64) []Number {
+	out := make([]Number, len(v))
+	for i, x := range v {
+		out[i] = Number(x)
+	}
+	return out
+}
+
+func floats(v []Number) []float64 {
+	out := make([]float64, len(v))
+	for i, x := range v {
+		out[i] = float64(x)
+	}
+	return out
+}
+
+// usageAbstain refuses a probability threshold for numbers, which have none.
+func usageAbstain() error {
+	return fault.Usagef("P09", "--abstain is a probability and the labels are numbers; --abstain-rate leaves the rows with the widest intervals empty")
+}
+
+var errNoKept = errors.New("the model keeps nothing to judge confidence by")
