@@ -139,13 +139,16 @@ func (s *descent) recall(places []int, truth []float64, k int) float64 {
 	return float64(found) / float64(k*len(places))
 }
 
-// lists are the k nearest of each pool.
+// lists are the k nearest of each pool. A pool that holds fewer is given up for an exact search.
 func (s *descent) lists(k, workers int) *Lists {
 	n := s.t.pts.N
 	out := newLists(n, k)
 	parallel.For(workers, n, 4096, func(lo, hi int) {
 		for i := lo; i < hi; i++ {
 			row, l := s.t.number(i), s.list(i)
+			if l.index[k-1] < 0 {
+				s.t.finder().others(i, s.t.nodeOf(i, s.t.levels), l.close[:k], l.index[:k])
+			}
 			copy(out.Dist[row*k:(row+1)*k], l.close)
 			copy(out.Index[row*k:(row+1)*k], l.index)
 			s.t.rename(out.Index[row*k : (row+1)*k])

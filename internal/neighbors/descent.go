@@ -118,7 +118,7 @@ func (s *descent) run(ctx context.Context, o Options) (distances int64, err erro
 
 // start offers to each point the others of its leaf in one tree of random projections.
 func (s *descent) start(seed uint64, workers int) int64 {
-	places, starts := projections(s.t, seed, workers)
+	places, starts := projections(s.t, 2*s.pool, seed, workers)
 	near := closeness(s.t.metric)
 	var total int64
 	for v := range len(starts) - 1 {

@@ -251,3 +251,28 @@ func TestRadiusIsInclusive(t *testing.T) {
 		t.Errorf("%d neighbours on a 10 by 10 grid, want 360 (%v)", len(got.Index), err)
 	}
 }
+
+// TestShortPoolsAreFilled empties the pool of a point, as if the rounds had not reached it.
+func TestShortPoolsAreFilled(t *testing.T) {
+	m := clustered(2100, 8, 4, 4)
+	tr, err := newTree(context.Background(), m, Options{Metric: points.Euclidean, Workers: 2})
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := newDescent(tr, 20)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := s.run(context.Background(), Options{Workers: 2}); err != nil {
+		t.Fatal(err)
+	}
+	const victim = 77
+	for r := 3; r < 20; r++ {
+		s.close[victim*20+r], s.index[victim*20+r] = math.Inf(1), -1
+	}
+	got, _ := s.lists(10, 2).Row(tr.number(victim))
+	want, _ := engines(t, m, 10, Options{})["tree"].Row(tr.number(victim))
+	if !slices.Equal(got, want) {
+		t.Errorf("neighbours %v, want %v", got, want)
+	}
+}

@@ -7,21 +7,18 @@ import (
 	"pinfill/internal/parallel"
 )
 
-// projectLeaf is the largest number of points in a leaf of a tree of random projections.
-const projectLeaf = 40
-
-// projections cuts the points of t along random directions until each part holds at most projectLeaf of them, and
+// projections cuts the points of t along random directions until each part holds at most leaf points, and
 // gives the places leaf by leaf with the start of each leaf. A part is cut at the median of the inner products with the
 // difference of two of its points, so that the direction follows the data (a variant of the random projection trees of
 // Dasgupta and Freund, STOC 2008). Draws depend on seed and the part alone.
-func projections(t *tree, seed uint64, workers int) (places []int32, starts []int) {
+func projections(t *tree, leaf int, seed uint64, workers int) (places []int32, starts []int) {
 	n := t.pts.N
 	places = make([]int32, n)
 	for i := range places {
 		places[i] = int32(i)
 	}
 	parts := []int{0, n}
-	for level := uint64(0); n>>level > projectLeaf; level++ {
+	for level := uint64(0); n>>level > leaf; level++ {
 		next := make([]int, 2*len(parts)-1)
 		next[len(next)-1] = n
 		parallel.For(workers, len(parts)-1, 1, func(v, _ int) {
