@@ -34,6 +34,7 @@ const (
 	pointsArray = "points.f64" // N x D, row-major
 	localArray  = "local.f64"  // N
 	scoresArray = "scores.f64" // classes x N
+	spreadArray = "spread.f64" // N, or nothing for classes
 	modelName   = "model.json"
 )
 
@@ -48,6 +49,7 @@ func (m *Model) WriteTo(w io.Writer) (int64, error) {
 		{pointsArray, toBytes(m.Points.Data)},
 		{localArray, toBytes(m.Local)},
 		{scoresArray, toBytes(m.Scores...)},
+		{spreadArray, toBytes(m.Spread)},
 	}
 	man := manifest{Model: m, Arrays: map[string]string{}}
 	for _, a := range arrays {
@@ -126,7 +128,7 @@ func Read(b []byte) (*Model, error) {
 	if m.Format != Format {
 		return nil, fmt.Errorf("model of format %d, this program reads format %d; save it again with label --model", m.Format, Format)
 	}
-	for _, name := range []string{pointsArray, localArray, scoresArray} {
+	for _, name := range []string{pointsArray, localArray, scoresArray, spreadArray} {
 		sum := sha256.Sum256(entries[name])
 		if man.Arrays[name] != hex.EncodeToString(sum[:]) {
 			return nil, fmt.Errorf("%s does not match its checksum: the file was altered or cut off", name)
@@ -172,6 +174,9 @@ func (m *Model) fill(entries map[string][]byte) error {
 	}
 	m.Points = &points.Matrix{N: n, D: d, Data: fromBytes(entries[pointsArray])}
 	m.Local = fromBytes(entries[localArray])
+	if len(entries[spreadArray]) > 0 {
+		m.Spread = fromBytes(entries[spreadArray])
+	}
 	for at := 0; at < len(scores); at += n {
 		m.Scores = append(m.Scores, scores[at:at+n:at+n])
 	}

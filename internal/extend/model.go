@@ -36,12 +36,14 @@ type Model struct {
 	PText    string          `json:"p"`
 	Energy   string          `json:"energy"` // slope or conductance
 	Classes  []string        `json:"classes,omitempty"`
+	Labelled []int32         `json:"labelled"`           // vertices that were held, increasing; empty with tethers
 	Trust    json.RawMessage `json:"trust,omitempty"`    // what the judge of confidence keeps
 	Settings json.RawMessage `json:"settings,omitempty"` // as in the run record
 
 	Points *points.Matrix `json:"-"`          // one row a vertex
 	Local  []float64      `json:"-"`          // own scale of each vertex
 	Scores [][]float64    `json:"-"`          // one slice a class or one of numbers, by vertex; NaN out of reach
+	Spread []float64      `json:"-"`          // how far the labels around each vertex disagree; nil for classes
 	Rows   int            `json:"vertices"`   // = Points.N
 	Dims   int            `json:"dimensions"` // = Points.D
 }
@@ -90,28 +92,41 @@ func (x *Extender) NewWork() *Work {
 	}
 }
 
-// Row writes to scores the value of each class for a row of features (in the order of Features), and gives the
-// distance to the nearest vertex, in units of the points, and that vertex. A row on a vertex takes its value. The
-// scores are NaN where no neighbour has a value. The error says that the row cannot be scaled.
-func (x *Extender) Row(row, scores []float64, w *Work) (nearest float64, vertex int32, err error) {
+// Near is where a new row stands.
+type Near struct {
+	Distance float64 // to the nearest vertex, in units of the points
+	Vertex   int32   // that vertex
+	Spread   float64 // of the labels around the row: the mean of its neighbours', weighted as at p = 2; 0 for classes
+}
+
+// Row writes to scores the value of each class for a row of features (in the order of Features). A row on a vertex
+// takes its value. The scores are NaN where no neighbour has a value. The error says that the row cannot be scaled.
+func (x *Extender) Row(row, scores []float64, w *Work) (Near, error) {
+	var at Near
 	if err := x.Scaling.Apply(w.point, row); err != nil {
-		return 0, 0, err
+		return at, err
 	}
 	if err := x.index.Nearest(w.point, w.index, w.dist); err != nil {
-		return 0, 0, err
+		return at, err
 	}
-	nearest, vertex = w.dist[0], w.index[0]
-	if nearest == 0 {
+	at.Distance, at.Vertex = w.dist[0], w.index[0]
+	if at.Distance == 0 {
 		for c := range scores {
-			scores[c] = x.Scores[c][vertex]
+			scores[c] = x.Scores[c][at.Vertex]
 		}
-		return nearest, vertex, nil
+		if x.Spread != nil {
+			at.Spread = x.Spread[at.Vertex]
+		}
+		return at, nil
 	}
 	k := x.weigh(w)
 	for c := range scores {
-		scores[c] = x.value(x.Scores[c], w, k)
+		scores[c] = x.value(x.Scores[c], w, k, x.P)
 	}
-	return nearest, vertex, nil
+	if x.Spread != nil {
+		at.Spread = x.value(x.Spread, w, k, 2)
+	}
+	return at, nil
 }
 
 // weigh fills in ln w of the edges to the neighbours and gives their number. Where the kernel reaches none of them,
@@ -163,14 +178,14 @@ func (x *Extender) weigh(w *Work) int {
 // conductance is the name of the energy sum w |df|^p.
 const conductance = "conductance"
 
-func (x *Extender) value(score []float64, w *Work, k int) float64 {
+func (x *Extender) value(score []float64, w *Work, k int, p float64) float64 {
 	for j := range k {
 		w.value[j] = score[w.index[j]]
 	}
 	if math.IsNaN(w.value[0]) {
 		return w.value[0] // the nearest vertex, alone, is out of reach
 	}
-	return Vertex(w.logW[:k], w.value[:k], x.P)
+	return Vertex(w.logW[:k], w.value[:k], p)
 }
 
 // validate says what keeps a model, as read from a file, from being used.
@@ -183,6 +198,8 @@ func (m *Model) validate() error {
 		return fmt.Errorf("%d features, %d medians, %d inputs", len(m.Features), len(m.Median), m.Scaling.Inputs)
 	case len(m.Scores) == 0 || (len(m.Classes) > 0 && len(m.Scores) != len(m.Classes)):
 		return fmt.Errorf("%d scores for %d classes", len(m.Scores), len(m.Classes))
+	case m.Spread != nil && len(m.Spread) != n:
+		return fmt.Errorf("%d spreads for %d points", len(m.Spread), n)
 	case !(m.P > 1):
 		return fmt.Errorf("p is %v", m.P)
 	case m.K < 0 || (m.K == 0) == (m.Radius == 0) || !(m.Radius >= 0) || m.Rank < 1 || m.Rank > n:
@@ -190,6 +207,11 @@ func (m *Model) validate() error {
 	}
 	if err := m.Width.Validate(); err != nil {
 		return err
+	}
+	for i, v := range m.Labelled {
+		if v < 0 || int(v) >= n || i > 0 && m.Labelled[i-1] >= v {
+			return fmt.Errorf("labelled vertices are out of order at %d", i)
+		}
 	}
 	for _, v := range m.Points.Data {
 		if math.IsNaN(v) || math.IsInf(v, 0) {

@@ -2,7 +2,7 @@ package job
 
 import (
 	"encoding/json"
-	"errors"
+	"fmt"
 	"math"
 
 	"pinfill/internal/choose"
@@ -12,13 +12,13 @@ import (
 
 // kept is what a run keeps to judge rows: in memory for its own rows, in the model file for new ones.
 type kept struct {
-	Weights  choose.Weights        `json:"weights,omitempty"`
-	Evidence *trust.ClassEvidence  `json:"evidence,omitempty"`
-	Numbers  *trust.NumberEvidence `json:"numbers,omitempty"`
-	Coverage float64               `json:"coverage"`
-	Drawn    trust.Drawn           `json:"drawn"`
-	Distance []float64             `json:"-"` // of labelled vertices to the nearest other labelled one
+	Weights  choose.Weights        // classes
+	Evidence *trust.ClassEvidence  // classes; nil when labels are too few
+	Numbers  *trust.NumberEvidence // numbers; nil when labels are too few
+	Coverage float64
+	Drawn    trust.Drawn
 
+	far         float64 // distance to the nearest vertex that 99% of the vertices keep, in units of the points
 	calibration *trust.Calibration
 	sets        *trust.Sets
 	intervals   *trust.Intervals
@@ -34,6 +34,9 @@ func (k *kept) ready() error {
 	}
 	if k.Evidence == nil {
 		return trust.ErrNoEvidence
+	}
+	if k.Evidence.Classes != len(k.Weights) {
+		return fmt.Errorf("%d class weights for %d classes", len(k.Weights), k.Evidence.Classes)
 	}
 	if k.calibration, err = trust.FitCalibration(*k.Evidence); err != nil {
 		return err
@@ -55,21 +58,23 @@ func (k *kept) class(prob []float64, score func(int) float64) (confidence float6
 	return confidence, k.sets.Of(nil, prob)
 }
 
-// MarshalJSON and UnmarshalJSON keep numbers that JSON has no word for (a label without a left-out answer).
-func (k *kept) encode() ([]byte, error) {
-	if k == nil {
-		return nil, nil
-	}
-	plain := struct {
-		Weights  []Number   `json:"weights,omitempty"`
-		LeftOut  [][]Number `json:"left_out,omitempty"`
-		Given    []int      `json:"given,omitempty"`
-		Values   []Number   `json:"values,omitempty"`
-		Answers  []Number   `json:"answers,omitempty"`
-		Spread   []Number   `json:"spread,omitempty"`
-		Coverage float64    `json:"coverage"`
-		Drawn    int        `json:"drawn"`
-	}{Weights: numbers(k.Weights), Coverage: k.Coverage, Drawn: int(k.Drawn)}
+// keptJSON is kept as a model file holds it: numbers that JSON has no word for (a label without a left-out answer)
+// stand as null.
+type keptJSON struct {
+	Weights  []Number    `json:"weights,omitempty"`
+	LeftOut  [][]Number  `json:"left_out,omitempty"`
+	Given    []int       `json:"given,omitempty"`
+	Values   []Number    `json:"values,omitempty"`
+	Answers  []Number    `json:"answers,omitempty"`
+	Spread   []Number    `json:"spread,omitempty"`
+	Coverage float64     `json:"coverage"`
+	Drawn    trust.Drawn `json:"drawn"`
+	Far      Number      `json:"far"`
+}
+
+// MarshalJSON writes what is kept.
+func (k *kept) MarshalJSON() ([]byte, error) {
+	plain := keptJSON{Weights: numbers(k.Weights), Coverage: k.Coverage, Drawn: k.Drawn, Far: Number(k.far)}
 	if e := k.Evidence; e != nil {
 		plain.Given = e.Given
 		for _, s := range e.LeftOut {
@@ -80,6 +85,25 @@ func (k *kept) encode() ([]byte, error) {
 		plain.Values, plain.Answers, plain.Spread = numbers(e.Given), numbers(e.LeftOut), numbers(e.Spread)
 	}
 	return json.Marshal(plain)
+}
+
+// UnmarshalJSON reads what MarshalJSON writes.
+func (k *kept) UnmarshalJSON(b []byte) error {
+	var plain keptJSON
+	if err := json.Unmarshal(b, &plain); err != nil {
+		return err
+	}
+	*k = kept{Weights: floats(plain.Weights), Coverage: plain.Coverage, Drawn: plain.Drawn, far: float64(plain.Far)}
+	if plain.LeftOut != nil {
+		k.Evidence = &trust.ClassEvidence{Classes: len(plain.Weights), Given: plain.Given}
+		for _, s := range plain.LeftOut {
+			k.Evidence.LeftOut = append(k.Evidence.LeftOut, floats(s))
+		}
+	}
+	if plain.Values != nil {
+		k.Numbers = &trust.NumberEvidence{Given: floats(plain.Values), LeftOut: floats(plain.Answers), Spread: floats(plain.Spread)}
+	}
+	return nil
 }
 
 func numbers(v []float64) []Number {
@@ -102,5 +126,3 @@ func floats(v []Number) []float64 {
 func usageAbstain() error {
 	return fault.Usagef("P09", "--abstain is a probability and the labels are numbers; --abstain-rate leaves the rows with the widest intervals empty")
 }
-
-var errNoKept = errors.New("the model keeps nothing to judge confidence by")

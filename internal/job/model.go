@@ -3,11 +3,14 @@ package job
 import (
 	"encoding/json"
 	"io"
+	"math"
 	"os"
+	"slices"
 
 	"pinfill/internal/encode"
 	"pinfill/internal/extend"
 	"pinfill/internal/fault"
+	"pinfill/internal/neighbors"
 )
 
 // newModel reduces a run to what new rows need.
@@ -38,7 +41,32 @@ func (r *run) newModel(l *labelled) (*extend.Model, error) {
 	if l.data.labels.Task == encode.Classes {
 		m.Classes = l.data.labels.Names
 	}
+	keep := l.keep
+	if keep == nil {
+		keep = &kept{Weights: l.chosen.Weights, Coverage: r.Coverage, Drawn: drawn[r.Drawn]}
+	}
+	keep.far = farthest(n.lists)
+	if m.Trust, err = json.Marshal(keep); err != nil {
+		return nil, err
+	}
+	m.Spread = keep.spread
+	if r.Tether == 0 {
+		m.Labelled = n.fixed
+	}
 	return m, nil
+}
+
+// farthest is the distance to the nearest neighbour that 99 of 100 vertices keep.
+func farthest(lists *neighbors.Lists) float64 {
+	if lists == nil {
+		return math.Inf(1)
+	}
+	near := make([]float64, lists.N)
+	for i := range near {
+		near[i] = lists.Dist[i*lists.K]
+	}
+	slices.Sort(near)
+	return near[len(near)*99/100]
 }
 
 // writeModel writes the model, if one was asked for.

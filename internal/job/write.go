@@ -118,6 +118,9 @@ func (r *run) writeLabel(w *outputs, l *labelled) error {
 			return err
 		}
 	}
+	if err := r.writeModel(w, l); err != nil {
+		return err
+	}
 	return r.finish(w, l.record)
 }
 
