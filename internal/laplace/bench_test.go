@@ -3,6 +3,7 @@ package laplace
 import (
 	"context"
 	"fmt"
+	"maps"
 	"math"
 	"math/rand/v2"
 	"slices"
@@ -178,5 +179,37 @@ func BenchmarkSolve(b *testing.B) {
 				})
 			}
 		}
+	}
+}
+
+func BenchmarkHard(b *testing.B) {
+	cases := hardNetworks(100_000)
+	cases["narrow"] = func() (*sparse.CSR, []int32) { return cloud(b, 100_000, 2, .3, 0), spread(100_000, 100) }
+	cases["clustered"] = func() (*sparse.CSR, []int32) { return cloud(b, 100_000, 2, 1, 50), spread(100_000, 1000) }
+	cases["one label"] = func() (*sparse.CSR, []int32) { return cloud(b, 100_000, 2, 1, 0), []int32{77, 78} }
+	cases["half labelled"] = func() (*sparse.CSR, []int32) {
+		var f []int32
+		for i := 0; i < 100_000; i += 2 {
+			f = append(f, int32(i))
+		}
+		return cloud(b, 100_000, 2, 1, 0), f
+	}
+	for _, name := range slices.Sorted(maps.Keys(cases)) {
+		b.Run(name, func(b *testing.B) {
+			c, fixed := cases[name]()
+			label, count := sparse.Components(c)
+			held := make([]bool, count)
+			for _, v := range fixed {
+				held[label[v]] = true
+			}
+			for v, l := range label { // a label for each component
+				if !held[l] {
+					held[l] = true
+					fixed = append(fixed, int32(v))
+				}
+			}
+			slices.Sort(fixed)
+			benchmarkSolve(b, c, fixed, 1, Options{}, 1e-8)
+		})
 	}
 }

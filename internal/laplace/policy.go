@@ -17,6 +17,7 @@ const (
 	planMany     = 30_000  // and for many
 	planRescue   = 300_000 // and where nothing else has converged
 	manyColumns  = 4
+	closeEnough  = 1e-11 // figures that need no rescue
 	rescueWork   = 1e10
 	rescueFactor = 1 << 28 // entries
 )
@@ -26,6 +27,7 @@ type engines struct {
 	plan    *plan
 	planned int // most entries the factor was allowed when a plan was last sought; 0: never sought
 	factor  *factor
+	rough   *approximation
 	grid    *hierarchy
 	stale   bool   // the conductances have changed since grid was filled
 	first   int    // iterations of the first solve on the grid's aggregates
@@ -34,7 +36,7 @@ type engines struct {
 }
 
 func (e *engines) reweighted() {
-	e.factor = nil
+	e.factor, e.rough = nil, nil
 	e.stale = true
 }
 
@@ -61,22 +63,14 @@ func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error
 		if err := ctx.Err(); err != nil {
 			return total, err
 		}
-		k := single
-		if len(jobs) > 1 {
-			k = wide
+		slot, width := &single, 1
+		if len(jobs) > 2 { // a block costs more than two alone
+			slot, width = &wide, maxWidth
 		}
-		if k == nil {
-			width := 1
-			if len(jobs) > 1 {
-				width = maxWidth
-			}
-			k = newBlock(&s.a.sddm, s.options.Workers, width)
-			if len(jobs) > 1 {
-				wide = k
-			} else {
-				single = k
-			}
+		if *slot == nil {
+			*slot = newBlock(&s.a.sddm, s.options.Workers, width)
 		}
+		k := *slot
 		now := jobs[:min(k.width, len(jobs))]
 		jobs = jobs[len(now):]
 		b, t := make([]float64, s.a.n), make([]float64, s.a.n)
@@ -106,64 +100,96 @@ func (s *System) run(ctx context.Context, jobs []job, tol float64) (Stats, error
 
 // solveBlock solves the first used columns of k, of rhs right-hand sides in all.
 func (s *System) solveBlock(ctx context.Context, k *block, used, rhs int, tol float64) (Stats, error) {
-	method := s.options.Method
-	var before [maxWidth]int // iterations spent on methods that were given up
-	if method == Auto {
-		cheap, err := s.eliminationPays(ctx, rhs)
-		if err != nil {
-			return Stats{}, err
-		}
-		method = s.choice
-		switch {
-		case cheap:
-			method = Direct
-		case method == Auto && s.a.deep():
-			method, s.choice = Multigrid, Multigrid
-		case method == Auto || method == Jacobi:
-			columns, done, err := pcg(ctx, k, tol, jacobi{}, tooSlow)
-			if err != nil {
-				return Stats{}, err
-			}
-			if done {
-				s.choice = Jacobi
-				return s.rescue(ctx, k, used, tol, summary(columns[:used], before[:]))
-			}
-			for c := range before {
-				before[c] = columns[c].stats.Iterations
-			}
-			method, s.choice = Multigrid, Multigrid
-		}
-	} else if method == Direct {
+	switch s.options.Method {
+	case Auto:
+	case Direct:
 		if err := s.makePlan(ctx, math.MaxInt); err != nil {
 			return Stats{}, err
 		}
-	}
-	var m preconditioner
-	switch method {
-	case Direct:
 		return s.solveDirect(ctx, k, used, tol)
-	case Multigrid, Elimination:
-		m = s.hierarchy()
 	default:
-		m = jacobi{}
+		st, _, err := s.iterate(ctx, k, used, tol, s.options.Method, nil)
+		return st, err
 	}
-	columns, _, err := pcg(ctx, k, tol, m, nil)
-	if err != nil {
+	if pays, err := s.eliminationPays(ctx, rhs); err != nil {
 		return Stats{}, err
+	} else if pays {
+		return s.solveDirect(ctx, k, used, tol)
 	}
-	if method == Multigrid {
-		for _, c := range columns[:used] {
-			s.latest = c.stats.Iterations
-			if s.first == 0 {
-				s.first = s.latest
-			}
+	if s.choice == Auto && s.a.deep() {
+		s.choice = Multigrid
+	}
+	var st Stats
+	spent := 0
+	attempts := []struct {
+		method Method
+		quit   verdict
+	}{{Jacobi, tooSlow}, {Multigrid, hopeless}, {Elimination, nil}}
+	for _, try := range attempts {
+		if try.method < s.choice {
+			continue
+		}
+		var done bool
+		var err error
+		if st, done, err = s.iterate(ctx, k, used, tol, try.method, try.quit); err != nil {
+			return st, err
+		}
+		spent += st.Iterations
+		st.Iterations = spent
+		s.choice = try.method
+		if done && (st.good(tol) || try.method == Elimination) {
+			break
+		}
+		if rescued, err := s.canEliminate(ctx, rescueWork/10); done && rescued || err != nil {
+			break
 		}
 	}
-	st := summary(columns[:used], before[:])
-	if s.options.Method == Auto {
-		return s.rescue(ctx, k, used, tol, st)
+	if st.good(tol) {
+		return st, nil
 	}
-	return st, nil
+	can, err := s.canEliminate(ctx, rescueWork)
+	if err != nil || !can {
+		return st, err
+	}
+	better, err := s.solveDirect(ctx, k, used, tol)
+	better.Iterations = spent
+	return better, err
+}
+
+// good says that a solve converged, or came so close that elimination would not pay.
+func (s *Stats) good(tol float64) bool {
+	return s.Converged || max(s.Residual, s.Correction) <= max(tol, closeEnough)
+}
+
+// iterate runs one preconditioner on k; done is false if quit ended it.
+func (s *System) iterate(ctx context.Context, k *block, used int, tol float64, method Method, quit verdict) (st Stats, done bool, err error) {
+	var m preconditioner = jacobi{}
+	switch method {
+	case Multigrid:
+		m = s.hierarchy()
+	case Elimination:
+		if s.rough == nil {
+			if s.rough, err = newApproximation(ctx, k.a); err != nil {
+				return st, false, err
+			}
+		}
+		m = s.rough
+	}
+	columns, done, err := pcg(ctx, k, tol, m, quit)
+	if err != nil {
+		return st, false, err
+	}
+	st.Converged = true
+	for c := range used {
+		st.merge(columns[c].stats)
+	}
+	if method == Multigrid {
+		s.latest = columns[0].stats.Iterations
+		if s.first == 0 {
+			s.first = s.latest
+		}
+	}
+	return st, done, nil
 }
 
 // makePlan plans an elimination whose factor holds at most so many entries, if that can be, unless it was tried before.
@@ -198,42 +224,34 @@ func (s *System) eliminationPays(ctx context.Context, rhs int) (bool, error) {
 	return work <= iterateCost*float64(nnz)*float64(rhs)+smallChange, nil
 }
 
-// rescue eliminates where iterations have not converged and the factor is affordable.
-func (s *System) rescue(ctx context.Context, k *block, used int, tol float64, st Stats) (Stats, error) {
-	if st.Converged || s.a.n > planRescue {
-		return st, nil
+// canEliminate says whether an elimination of at most so much work is possible.
+func (s *System) canEliminate(ctx context.Context, work float64) (bool, error) {
+	if s.a.n > planRescue {
+		return false, nil
 	}
 	if err := s.makePlan(ctx, rescueFactor); err != nil {
-		return st, err
+		return false, err
 	}
-	if s.plan == nil || s.plan.work > rescueWork {
-		return st, nil
-	}
-	better, err := s.solveDirect(ctx, k, used, tol)
-	better.Iterations += st.Iterations
-	return better, err
+	return s.plan != nil && s.plan.work <= work, nil
 }
 
-func summary(columns []column, before []int) Stats {
-	total := Stats{Converged: true}
-	for c := range columns {
-		columns[c].stats.Iterations += before[c]
-		total.merge(columns[c].stats)
-	}
-	return total
-}
-
-// tooSlow predicts from the fall of the residual so far whether Jacobi will take longer than multigrid. Conjugate
-// gradients quicken once they have found the few smallest eigenvalues, so that an early forecast must be far worse.
-func tooSlow(iteration int, c *column, rr, tol float64) bool {
-	if iteration < 12 || iteration%4 != 0 {
+// hopeless predicts whether multigrid will take far longer than it should.
+func hopeless(iteration int, c *column, rr, tol float64) bool {
+	if iteration < 60 || iteration%20 != 0 {
 		return false
-	}
-	margin := 1.0
-	if iteration < 36 {
-		margin = 3
 	}
 	fall := math.Log(c.first/rr) / float64(iteration)
 	left := math.Log(rr / (tol * tol * c.bb))
-	return left > 0 && !(fall > 0 && left/fall*jacobiStep <= margin*multigridCost)
+	return left > 0 && !(fall > 0 && left/fall <= 60)
+}
+
+// tooSlow predicts from the fall of the residual so far whether Jacobi will take longer than multigrid, not before
+// conjugate gradients have had the time to find the few smallest eigenvalues, after which they quicken.
+func tooSlow(iteration int, c *column, rr, tol float64) bool {
+	if iteration < 24 || iteration%4 != 0 {
+		return false
+	}
+	fall := math.Log(c.first/rr) / float64(iteration)
+	left := math.Log(rr / (tol * tol * c.bb))
+	return left > 0 && !(fall > 0 && left/fall*jacobiStep <= multigridCost)
 }
