@@ -69,6 +69,7 @@ type checker struct {
 	value  []float64 // normalised values under test
 	noise  float64   // of a difference of two of them
 	report Report
+	lens   []float64 // scratch
 }
 
 func (c *checker) run() error {
@@ -87,17 +88,17 @@ func (c *checker) run() error {
 		}
 		origin, _ := w.gauge(p)
 		w.measure(p, origin)
-		var most, worst float64
+		var most, sure, worst float64
 		for _, v := range p.vertices {
 			up, down := c.slopes(v)
-			most, worst = max(most, c.surest(v)), max(worst, math.Abs(up-down))
+			most, sure, worst = max(most, up, down), max(sure, c.surest(v)), max(worst, math.Abs(up-down))
 			if s := c.shift(v); s > c.report.Shift {
 				c.report.Shift, c.report.Worst = s, v
 			}
 		}
 		// A length is e^(origin - ln w): slopes are in units of e^-origin.
 		steepest, gap = max(steepest, math.Log(most)+origin), max(gap, math.Log(worst)+origin)
-		c.report.Path = max(c.report.Path, c.path(w, p, most))
+		c.report.Path = max(c.report.Path, c.path(w, p, sure, most))
 	}
 	if !math.IsInf(gap, -1) {
 		c.report.Imbalance = math.Exp(gap - steepest)
@@ -128,24 +129,30 @@ func (c *checker) slopes(v int32) (up, down float64) {
 	return up, down
 }
 
-// shift is the distance from v's value to the one that balances its slopes.
+// shift is the distance from v's value to the one that balances its slopes. Lengths are relative to the shortest at v,
+// so that weights of any size count.
 func (c *checker) shift(v int32) float64 {
-	t := c.balance(v, c.value, 0)
-	return max(0, math.Abs(t-c.value[v])-c.noise)
+	cols, vals := c.g.Row(int(v))
+	top := slices.Max(vals)
+	c.lens = c.lens[:0]
+	for _, x := range vals {
+		c.lens = append(c.lens, math.Exp(min(top-x, reach)))
+	}
+	return max(0, math.Abs(balance(cols, c.lens, c.value, 0)-c.value[v])-c.noise)
 }
 
-// path compares the steepest path of a component with the steepest slope met on an edge. The search starts a little
-// below that slope, where it must find a path, and follows to the steepest.
-func (c *checker) path(w *worker, p part, most float64) float64 {
+// path compares the steepest path of a component with the steepest slope met on an edge, which lies between sure and
+// most. The search starts a little below that slope, where it must find a path, and follows to the steepest.
+func (c *checker) path(w *worker, p part, sure, most float64) float64 {
 	base := len(w.stack)
 	defer func() { w.stack = w.stack[:base] }()
-	if most == 0 {
+	if sure == 0 {
 		// Flat as far as values can show; so must the component be.
 		low, high := w.met(p.vertices)
 		return max(0, high-low-c.noise)
 	}
 	w.loosen(p.vertices)
-	slope := .9 * most
+	slope := .9 * sure
 	for {
 		above := w.steeper(p.vertices, p.id, slope)
 		if len(above) == 0 {
@@ -156,5 +163,5 @@ func (c *checker) path(w *worker, p part, most float64) float64 {
 		}
 		w.loosen(p.vertices)
 	}
-	return math.Abs(slope/most - 1)
+	return max(0, 1-slope/sure, slope/most-1)
 }

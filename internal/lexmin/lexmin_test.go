@@ -8,7 +8,7 @@ import (
 	"pinfill/internal/testproblems"
 )
 
-func solve(t *testing.T, pr testproblems.Problem, workers int) []float64 {
+func solve(t testing.TB, pr testproblems.Problem, workers int) []float64 {
 	t.Helper()
 	f, _, err := Solve(context.Background(), pr.Graph, pr.Fixed, pr.Values, Options{Workers: workers})
 	if err != nil {
@@ -39,16 +39,4 @@ var inf = math.Inf(1)
 var mixed = []testproblems.Options{
 	{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
 	{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
-}
-
-// Repeated removal of the steepest path found by search from every held vertex (testproblems.SteepestPaths).
-func TestRandomAgainstRemoval(t *testing.T) {
-	for seed := range uint64(300) {
-		pr := testproblems.Random(seed, inf, mixed[seed%uint64(len(mixed))])
-		want := testproblems.SteepestPaths(pr)
-		got := solve(t, pr, 2)
-		if e := testproblems.Distance(got, want) / pr.Range(); !(e <= 1e-9) {
-			t.Errorf("%s: %g off", pr.Name, e)
-		}
-	}
 }

@@ -41,19 +41,18 @@ func (w *worker) fix(path []step) {
 
 // star settles a vertex all of whose neighbours within reach are held.
 func (w *worker) star(v int32, alpha float64) {
-	w.f[v] = w.balance(v, w.f, alpha)
+	lo, hi := w.g.RowPtr[v], w.g.RowPtr[v+1]
+	w.f[v] = balance(w.g.Col[lo:hi], w.length[lo:hi], w.f, alpha)
 	w.set[v] = held
 	w.paths.Add(1)
 	w.settle(1)
 }
 
-// balance gives the value of v at which the steepest slope up to its neighbours equals the steepest down; neighbours
-// whose value is NaN do not count. A pair of neighbours decides, the one with the greatest slope across v: the slope is
+// balance gives the value of a vertex at which the steepest slope up to its neighbours equals the steepest down;
+// neighbours whose value is NaN do not count. A pair of neighbours decides, the one with the greatest slope across: the slope is
 // raised from alpha, which is below it, to that of the pair found at the last one until it stays (Dinkelbach's method
 // for a ratio).
-func (s *solver) balance(v int32, value []float64, alpha float64) float64 {
-	lo, hi := s.g.RowPtr[v], s.g.RowPtr[v+1]
-	cols, lens := s.g.Col[lo:hi], s.length[lo:hi]
+func balance(cols []int32, lens, value []float64, alpha float64) float64 {
 	for {
 		above, below := 0, 0
 		keyAbove, keyBelow := math.Inf(-1), math.Inf(1)

@@ -6,9 +6,9 @@ import (
 	"slices"
 )
 
-// reach is how far the logarithm of a length may lie from 0 on either side: e^650 is 1e282, which leaves room to add
-// 1e25 lengths and to divide a value by one.
-const reach = 650
+// reach is how far the logarithm of a length may lie from 0 on either side: e^500 is 1e217, which leaves room to add
+// 1e10 lengths and to divide the least difference of values that counts (see level) by their sum.
+const reach = 500
 
 // run settles every free vertex, component by component, each with lengths in a scale of its own.
 func (s *solver) run() error {
@@ -38,7 +38,7 @@ func (s *solver) meetsHeld(v int32) bool {
 }
 
 // scaled settles a component after giving it lengths l = 1/w: relative to the greatest weight where all then lie in
-// [1, e^650], otherwise spread over [e^-650, e^650], and where even that is too narrow step by step (see wide).
+// [1, e^500], otherwise spread over [e^-500, e^500], and where even that is too narrow step by step (see wide).
 func (w *worker) scaled(p part) {
 	origin, wide := w.gauge(p)
 	w.measure(p, origin)
@@ -65,7 +65,7 @@ func (w *worker) gauge(p part) (origin float64, wide bool) {
 	return high - max(0, high-low-reach), false
 }
 
-// measure sets lengths to e^(origin - ln w), cut to [e^-650, e^650].
+// measure sets lengths to e^(origin - ln w), cut to [e^-500, e^500].
 func (w *worker) measure(p part, origin float64) {
 	for _, v := range p.vertices {
 		for k := w.g.RowPtr[v]; k < w.g.RowPtr[v+1]; k++ {
@@ -78,7 +78,7 @@ func (w *worker) measure(p part, origin float64) {
 // measure has cut.
 const negligible = 1e-130
 
-// wide settles a component whose weights span more than e^1300. The steepest path is about as long as its weakest edge,
+// wide settles a component whose weights span more than e^1000. The steepest path is about as long as its weakest edge,
 // and no path between different values has a stronger weakest edge than the bottleneck: with that as the unit,
 // stronger edges that are cut add nothing a float64 can show, and weaker ones lie on no path steeper than negligible.
 // Those that are steeper are settled, and what remains starts again with its own bottleneck.
@@ -88,7 +88,7 @@ func (w *worker) wide(p part) {
 	w.loosen(p.vertices)
 	above := w.steeper(p.vertices, p.id, negligible)
 	if len(above) == 0 {
-		w.begin(p)
+		w.begin(p) // flat: there is no bottleneck
 		return
 	}
 	w.digAll(above, negligible)
@@ -141,7 +141,7 @@ func (w *worker) bottleneck(p part) (logw float64, found bool) {
 			parent[b] = a
 			low[a], high[a] = min(low[a], low[b]), max(high[a], high[b])
 		}
-		if low[a] < high[a] {
+		if high[a]-low[a] >= level {
 			return w.g.Val[k], true
 		}
 	}

@@ -10,7 +10,7 @@ import (
 const slack = 1e-14
 
 // small is the set size from which on the steepest path itself is sought, not a level that halves the set.
-const small = 48
+const small = 16
 
 // pivot gives the vertex of q with the greatest slope found so far (the first of those), and the next level to look at.
 func (w *worker) pivot(q []int32) (best int32, beta float64) {
@@ -38,12 +38,12 @@ func (w *worker) pivot(q []int32) (best int32, beta float64) {
 const quantile = .6
 
 // steeper gives the vertices of q, a set with number id, through which a path steeper than beta may pass, with both
-// bounds and the slope behind them. lower must hold keys that bound those to come from below. It writes upper
-// wherever the search comes.
+// bounds and the slope behind them. The lower keys on entry must bound those to come from below; both bounds are
+// written wherever a search comes.
 func (w *worker) steeper(q []int32, id int32, beta float64) []int32 {
 	pass := w.ids.Add(1)
-	w.search(q, id, beta, 1, w.upper, w.lower, pass, false)
-	return w.search(q, id, beta, -1, w.lower, w.upper, pass, true)
+	w.search(sought{q, id, beta, 1, pass, false}, w.upper, w.lower)
+	return w.search(sought{q, id, beta, -1, pass, true}, w.lower, w.upper)
 }
 
 // loosen sets the lower bounds of a set to the least that can be said: no value beyond the greatest met.
@@ -68,12 +68,22 @@ func (s *solver) met(q []int32) (low, high float64) {
 	return low, high
 }
 
-// search is Dijkstra's method from the held vertices around q: own becomes the least sign*y_t + alpha d_t, wherever
-// that and the other bound leave room for a path steeper than alpha. The first search takes the other bound from
-// an earlier, lower level; the second takes it from the first, and gives the vertices it settles, with their slopes.
-// A vertex between a vertex with room and the held vertex it hangs on has room too, so nothing is cut off by
-// stopping where there is none.
-func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []bound, pass int32, second bool) []int32 {
+// sought is what one search is told: the set, its number, the level, the sign of the values (1 for upper bounds, -1
+// for lower), the number of the pass, and whether the other bound is from this pass or from an earlier, lower level.
+type sought struct {
+	q           []int32
+	id          int32
+	alpha, sign float64
+	pass        int32
+	second      bool
+}
+
+// search is Dijkstra's method from the held vertices around a set: own becomes the least sign*y_t + alpha d_t,
+// wherever that and the other bound leave room for a path steeper than alpha. A vertex between one with room and the
+// held vertex it hangs on has room too, so nothing is cut off by stopping where there is none. The second search gives
+// the vertices it settles, with their slopes.
+func (w *worker) search(s sought, own, other []bound) []int32 {
+	q, id, alpha, sign, pass, second := s.q, s.id, s.alpha, s.sign, s.pass, s.second
 	tight := alpha * (1 + slack)
 	g, length, set, f := w.g, w.length, w.set, w.f
 	h := w.heap[:0]
@@ -91,7 +101,7 @@ func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []b
 				b.key, b.value, b.dist, b.parent = key, sign*f[u], length[k], u
 			}
 		}
-		if b.key < math.Inf(1) && room(&b, &other[v], tight, second) {
+		if b.key < math.Inf(1) && room(&s, &b, &other[v], tight) {
 			own[v] = b
 			h = append(h, item{b.key, v})
 		}
@@ -109,7 +119,7 @@ func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []b
 		}
 		if second {
 			w.stack = append(w.stack, v)
-			w.slope[v] = -(b.value + other[v].value) / (b.dist + other[v].dist)
+			w.slope[v] = slopeBetween(&b, &other[v])
 		}
 		lo, hi := g.RowPtr[v], g.RowPtr[v+1]
 		cols := g.Col[lo:hi]
@@ -119,17 +129,18 @@ func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []b
 			if set[u] != id {
 				continue
 			}
-			next := bound{dist: b.dist + lens[k], value: b.value, parent: v, pass: pass}
-			next.key = next.value + float64(alpha*next.dist)
-			if o := &own[u]; o.pass == pass && o.key <= next.key {
+			dist := b.dist + lens[k]
+			key := b.value + float64(alpha*dist)
+			o := &own[u]
+			if o.pass == pass && o.key <= key {
 				continue
 			}
-			o := &other[u]
-			if (second && o.pass != pass) || !room(&next, o, tight, second) {
+			next := bound{key, dist, b.value, v, pass}
+			if !room(&s, &next, &other[u], tight) {
 				continue
 			}
-			own[u] = next
-			h.push(item{next.key, u})
+			*o = next
+			h.push(item{key, u})
 		}
 		if pops&0xffff == 0 && w.stop.Load() {
 			break
@@ -141,14 +152,22 @@ func (w *worker) search(q []int32, id int32, alpha, sign float64, own, other []b
 	return w.stack[from:]
 }
 
-// room says whether a path steeper than the level may pass between two bounds. In the second search both stand at
-// the same level, and the slope itself is compared: keys of nearly equal values cancel.
-func room(own, other *bound, tight float64, second bool) bool {
-	if second {
-		return -(own.value + other.value) > float64(tight*(own.dist+other.dist))
+// room says whether a path steeper than the level may pass a vertex with these bounds.
+func room(s *sought, own, other *bound, tight float64) bool {
+	if s.second {
+		return other.pass == s.pass && crosses(own, other, tight)
 	}
 	return own.key+other.key < 0
 }
+
+// crosses says whether the path behind two bounds of a vertex is steeper than a level. The slope itself is compared,
+// not the sum of the keys, in which nearly equal values cancel.
+func crosses(a, b *bound, level float64) bool {
+	return -(a.value + b.value) > float64(level*(a.dist+b.dist))
+}
+
+// slopeBetween is the slope of the path behind two bounds of a vertex.
+func slopeBetween(a, b *bound) float64 { return -(a.value + b.value) / (a.dist + b.dist) }
 
 // distances is Dijkstra's method from the held vertices of one value: own becomes their distance.
 func (w *worker) distances(q []int32, id int32, value, sign float64, own []bound, pass int32) {

@@ -148,46 +148,21 @@ func (w *worker) digAll(above []int32, alpha float64) { w.each(w.components(abov
 // fork is the size from which a component is worth a goroutine of its own.
 const fork = 500
 
-// each digs in every part, some of them on other workers when there are any to spare.
+// each digs in every part.
 func (w *worker) each(parts []part, alpha float64) {
 	w.forEach(parts, func(w *worker, p part) { w.dig(p.vertices, p.id, alpha) })
 }
 
+// forEach does something with every part, some of them on other workers when there are any to spare.
 func (w *worker) forEach(parts []part, do func(*worker, part)) {
-	var wg sync.WaitGroup
-	var failed atomic.Pointer[any]
-	spawned := false
+	var side aside
 	for i, p := range parts {
-		if i+1 < len(parts) && len(p.vertices) >= fork {
-			select {
-			case w.tokens <- struct{}{}:
-				spawned = true
-				wg.Go(func() {
-					defer func() {
-						if r := recover(); r != nil {
-							failed.CompareAndSwap(nil, &r)
-						}
-						<-w.tokens
-					}()
-					other := w.spare.Get().(*worker)
-					do(other, p)
-					other.stack = other.stack[:0]
-					w.spare.Put(other)
-				})
-				continue
-			default:
-			}
+		if i+1 < len(parts) && len(p.vertices) >= fork && side.run(w, func(w *worker) { do(w, p) }) {
+			continue
 		}
 		do(w, p)
 	}
-	if spawned {
-		<-w.tokens // while waiting, let another run
-		wg.Wait()
-		w.tokens <- struct{}{}
-	}
-	if r := failed.Load(); r != nil {
-		panic(*r)
-	}
+	side.wait(w)
 }
 
 // keep gives the vertices of q that are still free, marked with id again.
@@ -211,11 +186,14 @@ func (w *worker) fresh(rest []int32) {
 	w.forEach(w.split(rest, id), func(w *worker, p part) { w.begin(p) })
 }
 
+// level is the difference of values, as a share of the label range, below which a component counts as flat.
+const level = 1e-80
+
 // begin settles a component: flat where it meets one value only, otherwise from the distances to the vertices of
 // the greatest and of the least value, the bounds at level 0.
 func (w *worker) begin(p part) {
 	low, high := w.met(p.vertices)
-	if low >= high {
+	if high-low < level {
 		for _, v := range p.vertices {
 			w.f[v] = low
 			w.set[v] = held
