@@ -32,7 +32,7 @@ func respond(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions, cou
 		tol = 1e-9
 	}
 	var all []responses
-	for _, part := range sparse.Split(conductances(p.Graph, p.Energy)) {
+	for _, part := range sparse.Split(Conductances(p.Graph, p.Energy)) {
 		r := responses{part: part}
 		for v, x := range part.Vertices {
 			if at[x] > 0 {

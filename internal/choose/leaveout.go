@@ -73,9 +73,9 @@ func members(fold []int32, folds int) [][]int {
 	return m
 }
 
-// conductances gives w^2 (slope) or w (conductance), divided by the largest, from ln w. Edges too weak for a float64
+// Conductances gives w^2 (slope) or w (conductance), divided by the largest, from ln w. Edges too weak for a float64
 // keep the smallest normal number, so that what they join stays joined.
-func conductances(g *sparse.CSR, e solve.Energy) *sparse.CSR {
+func Conductances(g *sparse.CSR, e solve.Energy) *sparse.CSR {
 	power := 2.0
 	if e == solve.Conductance {
 		power = 1

@@ -25,7 +25,7 @@ func (b Balance) Weigh(p solve.Problem, scores [][]float64, l Labels, workers in
 	byMass := massWeights(masses(scores, l), share)
 	byCount := matchWeights(scores, freeOf(scores, l), share, workers)
 	mixed := between(byMass, byCount, .5)
-	conductance := conductances(p.Graph, p.Energy)
+	conductance := Conductances(p.Graph, p.Energy)
 	mass := math.Log(normalisedCut(conductance, scores, byMass, l, workers) + cutFloor)
 	count := math.Log(normalisedCut(conductance, scores, byCount, l, workers) + cutFloor)
 	switch {
