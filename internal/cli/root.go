@@ -44,7 +44,7 @@ how far to trust it. Settings that are not given are chosen from the table; ever
 	a.root.CompletionOptions.HiddenDefaultCmd = false
 	a.root.AddCommand(
 		a.checkCommand(), a.labelCommand(),
-		a.extendCommand(), a.graphCommand(), a.demoCommand(), a.versionCommand(),
+		a.auditCommand(), a.nextCommand(), a.extendCommand(), a.assessCommand(), a.graphCommand(), a.demoCommand(), a.versionCommand(),
 	)
 	a.root.SetHelpFunc(a.help)
 	a.root.Args = func(_ *cobra.Command, args []string) error {

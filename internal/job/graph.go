@@ -2,7 +2,6 @@ package job
 
 import (
 	"context"
-	"fmt"
 
 	"pinfill/internal/graph"
 	"pinfill/internal/table"
@@ -86,13 +85,13 @@ func (r *run) loadUnlabelled(ctx context.Context) (*data, error) {
 	return d, r.loadFeatures(ctx, d)
 }
 
-// vertexNames gives each vertex a name quoted for CSV.
-func (r *run) vertexNames(d *data, n *network) func(int32) []byte {
-	first := make([]int32, n.n) // row that names the vertex
+// namedBy gives each vertex the row it is named by: the first of its rows by id, or by position without ids.
+func (r *run) namedBy(d *data, v *vertices) []int32 {
+	first := make([]int32, v.n)
 	for i := range first {
 		first[i] = -1
 	}
-	for row, x := range n.of {
+	for row, x := range v.of {
 		if x < 0 {
 			continue
 		}
@@ -100,10 +99,13 @@ func (r *run) vertexNames(d *data, n *network) func(int32) []byte {
 			first[x] = int32(row)
 		}
 	}
-	if d.id < 0 {
-		return func(v int32) []byte { return []byte(fmt.Sprint(first[v] + 1)) }
-	}
-	return func(v int32) []byte { return table.AppendCell(nil, d.table.Cell(int(first[v]), d.id), ',') }
+	return first
+}
+
+// vertexNames gives each vertex a name quoted for CSV.
+func (r *run) vertexNames(d *data, n *network) func(int32) []byte {
+	first := r.namedBy(d, n.vertices)
+	return func(v int32) []byte { return table.AppendCell(nil, []byte(d.rowName(int(first[v]))), ',') }
 }
 
 func lowest(v []float64) float64 {
