@@ -42,6 +42,9 @@ func lnSize(d, eps2 float64) float64 { return 0.5 * math.Log(float64(d*d)+(eps2+
 func (s *Solver) linearise(w *work, p, eps, pad float64) (imbalance float64) {
 	eps2 := eps * eps
 	logPad := math.Log(pad)
+	if p < 2 {
+		logPad = math.Inf(-1) // weights grow where steps vanish
+	}
 	parallel.For(s.workers, len(s.ea), edgeChunk, func(lo, hi int) {
 		for e := lo; e < hi; e++ {
 			w.lc[e] = float64(p*s.ea[e]) + float64((p-2)*lnSize(w.d[e], eps2))

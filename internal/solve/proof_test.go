@@ -5,6 +5,7 @@ import (
 	"flag"
 	"fmt"
 	"math"
+	"strings"
 	"testing"
 
 	"pinfill/internal/testproblems"
@@ -26,7 +27,7 @@ func oracle(t testproblems.Problem) (f []float64, uncertain float64) {
 		f, moved := testproblems.Reweight(t)
 		return f, moved / t.Range()
 	default:
-		lo, hi, width := testproblems.Enclose(t, 2e-11, 20000)
+		lo, hi, width := testproblems.Enclose(t, 1e-10, 3000)
 		f := make([]float64, len(lo))
 		for v := range f {
 			f[v] = 0.5 * (lo[v] + hi[v])
@@ -54,6 +55,9 @@ func TestProof(t *testing.T) {
 			missed, silent, unsure := 0, 0, 0
 			for seed := range count {
 				o := testproblems.Options{}
+				if *proofCount == 0 && p >= 2 {
+					o.MaxN = 14 // the sweeps of the oracle take about n^2 passes
+				}
 				switch seed % 6 {
 				case 1:
 					o.Levels = 2
@@ -103,7 +107,11 @@ func TestClosedForms(t *testing.T) {
 			t.Errorf("%s: %v", tp.Name, err)
 			continue
 		}
-		if e := tp.Error(r.Values); !(e <= 1e-9) {
+		tolerance := 1e-9
+		if strings.HasPrefix(tp.Name, "printed") {
+			tolerance = 1e-5 // printed to five or six digits
+		}
+		if e := tp.Error(r.Values); !(e <= tolerance) {
 			t.Errorf("%s: error %.3g of the range, %v %+v", tp.Name, e, r.Status, r.Certificate)
 		}
 		if !r.Status.Proven() {
