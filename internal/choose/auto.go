@@ -17,6 +17,9 @@ type Options struct {
 	Progress  func(share float64)
 	// Scores asks for left-out scores even where there is nothing to choose.
 	Scores bool
+	// Want marks the settings that Sweep scores; others are solved only where a wanted one starts from them, so that
+	// the scores of parts of a sweep are those of the whole. nil means all.
+	Want []bool
 }
 
 // Decision is what Auto chose.
@@ -122,36 +125,39 @@ func speaking(l Labels) (bool, string) {
 	return true, ""
 }
 
+// Advise gives the setting to use among scores of one table, and the one it is measured against: the first certified
+// one at the default p, or the first certified. Another is better where its left-out loss is lower by more than the
+// noise of the paired difference allows. Scores without left-out losses only fall back.
+func Advise(scores []*Score, task Task) (best, first int) {
+	first = -1
+	def, margin := float64(DefaultClassP), float64(classMargin)
+	if task == Numbers {
+		def, margin = DefaultNumberP, numberMargin
+	}
+	for i, s := range scores {
+		if s.Certified && (first < 0 || s.P == def && scores[first].P != def) {
+			first = i
+		}
+	}
+	first = max(first, 0)
+	best = first
+	var gain float64
+	for i, s := range scores {
+		if i == first || !s.Certified || s.Loss == nil || scores[first].Loss == nil {
+			continue
+		}
+		g, e := paired(scores[first].Loss, s.Loss)
+		if g > margin*e && g > gain {
+			best, gain = i, g
+		}
+	}
+	return best, first
+}
+
 // settle picks among the scores.
 func (d *Decision) settle(l Labels, all []Setting, compared, fixed bool, why string) {
-	best := -1
-	for i, s := range d.Scores {
-		if s.Certified {
-			best = i
-			break
-		}
-	}
-	skipped := best != 0
-	if best < 0 {
-		best = 0
-	}
-	first := best
-	var gain float64
-	margin := float64(classMargin)
-	if l.Task == Numbers {
-		margin = numberMargin
-	}
-	if compared {
-		for i, s := range d.Scores {
-			if i == first || !s.Certified {
-				continue
-			}
-			g, e := paired(d.Scores[first].loss, s.loss)
-			if g > margin*e && g > gain {
-				best, gain = i, g
-			}
-		}
-	}
+	best, first := Advise(d.Scores, l.Task)
+	skipped := first != 0
 	c := d.Scores[best]
 	c.Advised = true
 	d.Setting, d.Chosen = c.Setting, c

@@ -25,7 +25,7 @@ type Score struct {
 	Count       solve.Counts
 	Fields      [][]float64    // the solution, class by vertex
 	Solves      []solve.Result // certificates behind Fields, one a component and class in that order, without values
-	loss        []float64      // by label: 0 or 1, or the squared residual; NaN where not answered
+	Loss        []float64      // by label: 0 or 1, or the squared residual; NaN where not answered
 	left        *LeftOut
 }
 
@@ -97,29 +97,29 @@ func decidedShares(fields [][]float64, w Weights, l Labels) []float64 {
 
 // judge turns left-out answers into losses.
 func (s *Score) judge(l Labels) {
-	s.loss = make([]float64, l.Count())
+	s.Loss = make([]float64, l.Count())
 	var logs float64
 	var all []float64
-	for k := range s.loss {
+	for k := range s.Loss {
 		score := s.left.Score[k]
-		s.loss[k] = math.NaN()
+		s.Loss[k] = math.NaN()
 		if math.IsNaN(score[0]) {
 			continue
 		}
 		if l.Task == Numbers {
 			e := score[0] - l.Target[0][k]
-			s.loss[k] = e * e
+			s.Loss[k] = e * e
 		} else {
 			w := LeftWeights(s.left, int(s.left.Fold[k]), s.Balance, l)
 			at := func(c int) float64 { return score[c] }
 			own := l.Class(k)
-			s.loss[k] = 1
+			s.Loss[k] = 1
 			if w.Decide(at) == own {
-				s.loss[k] = 0
+				s.Loss[k] = 0
 			}
 			logs -= math.Log(max(w.Shares(nil, at)[own], 1e-3))
 		}
-		all = append(all, s.loss[k])
+		all = append(all, s.Loss[k])
 	}
 	s.LeftOut = len(all)
 	if s.LeftOut == 0 {

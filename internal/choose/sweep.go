@@ -29,9 +29,21 @@ func Sweep(ctx context.Context, source Source, l Labels, settings []Setting, o O
 		fold = FoldsOf(l, foldCount, o.Seed)
 	}
 	t := trial{energy: o.Energy, labels: l, fold: fold, solve: solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers}, measure: true}
+	visited := make([]bool, len(settings))
 	done := 0
 	for i, s := range settings {
-		if c.Scores[i] != nil {
+		if visited[i] {
+			continue
+		}
+		var same []int
+		wanted := false
+		for j := i; j < len(settings); j++ {
+			if !visited[j] && s.sameGraph(settings[j]) {
+				same, visited[j] = append(same, j), true
+				wanted = wanted || o.wants(j)
+			}
+		}
+		if !wanted {
 			continue
 		}
 		var err error
@@ -41,19 +53,23 @@ func Sweep(ctx context.Context, source Source, l Labels, settings []Setting, o O
 		if err := l.Validate(t.graph.N); err != nil {
 			return nil, err
 		}
-		var same []int
-		for j := i; j < len(settings); j++ {
-			if c.Scores[j] == nil && s.sameGraph(settings[j]) {
-				same = append(same, j)
-			}
-		}
 		for _, path := range paths(settings, same) {
+			for len(path) > 0 && !o.wants(path[len(path)-1]) {
+				path = path[:len(path)-1]
+			}
 			var start [][]float64
 			for _, j := range path {
 				// p = inf is solved exactly, from nothing.
 				from := start
 				if math.IsInf(settings[j].P, 1) {
 					from = nil
+				}
+				if !o.wants(j) { // on the way to one that is
+					p := solve.Problem{Graph: t.graph, P: settings[j].P, Energy: t.energy}
+					if start, _, err = Solve(ctx, p, l, from, t.solve); err != nil {
+						return nil, err
+					}
+					continue
 				}
 				sc, err := t.score(ctx, settings[j], from)
 				if err != nil {
@@ -67,9 +83,13 @@ func Sweep(ctx context.Context, source Source, l Labels, settings []Setting, o O
 			}
 		}
 	}
-	c.agree(l)
+	if o.Want == nil {
+		c.agree(l)
+	}
 	return c, nil
 }
+
+func (o Options) wants(i int) bool { return o.Want == nil || o.Want[i] }
 
 // paths orders settings of one graph by the way p is approached: from 2 upwards, and from below 2 downwards.
 func paths(settings []Setting, of []int) [][]int {
@@ -88,61 +108,9 @@ func paths(settings []Setting, of []int) [][]int {
 
 // agree fills the agreement of each pair.
 func (c *Comparison) agree(l Labels) {
-	n := len(c.Scores)
-	c.Agreement = make([][]float64, n)
-	for i := range c.Agreement {
-		c.Agreement[i] = make([]float64, n)
-		c.Agreement[i][i] = 1
-	}
-	if l.Task == Numbers {
-		size := slices.Max(l.Target[0]) - slices.Min(l.Target[0])
-		for i := range n {
-			for j := range i {
-				a := numbersAgree(c.Scores[i].Fields[0], c.Scores[j].Fields[0], l, size)
-				c.Agreement[i][j], c.Agreement[j][i] = a, a
-			}
-		}
-		return
-	}
-	decided := make([][]int, n)
+	answers := make([]Answers, len(c.Scores))
 	for i, s := range c.Scores {
-		for _, v := range freeOf(s.Fields, l) {
-			decided[i] = append(decided[i], s.Weights.Decide(func(c int) float64 { return s.Fields[c][v] }))
-		}
+		answers[i] = s.Answers(l)
 	}
-	for i := range n {
-		for j := range i {
-			if len(decided[i]) != len(decided[j]) || len(decided[i]) == 0 {
-				c.Agreement[i][j], c.Agreement[j][i] = math.NaN(), math.NaN()
-				continue
-			}
-			same := 0
-			for k := range decided[i] {
-				if decided[i][k] == decided[j][k] {
-					same++
-				}
-			}
-			a := float64(same) / float64(len(decided[i]))
-			c.Agreement[i][j], c.Agreement[j][i] = a, a
-		}
-	}
-}
-
-func numbersAgree(f, g []float64, l Labels, size float64) float64 {
-	held := make([]bool, len(f))
-	for _, v := range l.Vertex {
-		held[v] = true
-	}
-	var s float64
-	n := 0
-	for v := range f {
-		if !held[v] && !math.IsNaN(f[v]) && !math.IsNaN(g[v]) {
-			s += (f[v] - g[v]) * (f[v] - g[v])
-			n++
-		}
-	}
-	if n == 0 || !(size > 0) {
-		return math.NaN()
-	}
-	return 1 - math.Sqrt(s/float64(n))/size
+	c.Agreement = Agreement(answers, l)
 }
