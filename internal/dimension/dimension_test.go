@@ -87,7 +87,7 @@ func TestSurfacesCubesAndClouds(t *testing.T) {
 		{"cloud 10", 2000, 10, gaussian, 9.12, 9.82},
 		{"cloud 20", 2000, 20, gaussian, 15.9, 17.9},
 	} {
-		r, err := Estimate(lists(t, sample(11, c.n, c.d, c.fill), 40), Options{})
+		r, err := Estimate(lists(t, sample(11, c.n, c.d, c.fill), 20), Options{})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -239,7 +239,7 @@ func TestRoundedData(t *testing.T) {
 		{"space", grid(3, 20), 60, 3, 0.4},
 		{"half-full plane", sample(3, 3000, 2, rounded(0.02)), 40, 2, 0.2},
 		{"sparse plane", sample(4, 3000, 2, rounded(0.005)), 40, 2, 0.2},
-		{"half-full space", sample(5, 6000, 3, rounded(0.05)), 40, 3, 0.4},
+		{"half-full space", sample(5, 4000, 3, rounded(0.05)), 40, 3, 0.4},
 	} {
 		r, err := Estimate(lists(t, c.m, c.k), Options{Columns: c.m.D})
 		if err != nil {

@@ -71,9 +71,10 @@ func TestSpanningForestAgainstKruskal(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
+		all := dense(a)
 		var got []float64
 		for k, e := range SpanningForest(a, 3) {
-			if e.I >= e.J || dense(a)[[2]int32{e.I, e.J}] != e.W {
+			if e.I >= e.J || all[[2]int32{e.I, e.J}] != e.W {
 				t.Fatalf("seed %d: edge %d of the forest, %+v, is none of the graph", seed, k, e)
 			}
 			got = append(got, e.W)
@@ -90,17 +91,18 @@ func TestSpanningForestAgainstKruskal(t *testing.T) {
 
 // Penrose (1997, Annals of Applied Probability 7): the longest edge r of the minimum spanning tree of n uniform points
 // in the plane, on the torus, obeys P(n pi r^2 - ln n <= t) -> exp(-exp(-t)), a law of mean 0.577 and standard deviation
-// 1.28: r is the radius at which the points connect. The mean of 60 draws has a standard error of 0.17; three of these
-// are allowed and 0.3 for the slow convergence.
+// 1.28: r is the radius at which the points connect. The mean of 40 draws has a standard error of 0.2; three of these
+// are allowed, and 0.4 upwards: the law counts single points cut off, and at this n small groups, fewer by a factor of
+// order ln n only, still push the mean up (Prim's method in O(n^2) measured 0.90 at n = 1,500).
 func TestConnectivityRadiusOfUniformPoints(t *testing.T) {
-	const n, draws = 1200, 60
+	const n, draws = 800, 40
 	var mean float64
 	for seed := range uint64(draws) {
-		r := torusGraph(t, seed, n, 0.08).BandwidthWindow(2, 3, false, 8, 0).Connect
+		r := torusGraph(t, seed, n, 0.1).BandwidthWindow(2, 3, false, 8, 0).Connect
 		mean += (n*math.Pi*r*r - math.Log(n)) / draws
 	}
 	t.Logf("n pi r^2 - ln n is %.3f on average", mean)
-	if math.Abs(mean-0.577) > 0.8 {
+	if off := mean - 0.577; off < -0.6 || off > 1 {
 		t.Errorf("n pi r^2 - ln n is %v on average, theory says 0.577", mean)
 	}
 }
@@ -117,9 +119,10 @@ func torusGraph(t *testing.T, seed uint64, n int, radius float64) *Graph {
 	for i := range n {
 		for j := range n {
 			dx, dy := math.Abs(m.Row(i)[0]-m.Row(j)[0]), math.Abs(m.Row(i)[1]-m.Row(j)[1])
-			if d := math.Hypot(min(dx, 1-dx), min(dy, 1-dy)); i != j && d <= radius {
+			dx, dy = min(dx, 1-dx), min(dy, 1-dy)
+			if d2 := dx*dx + dy*dy; i != j && d2 <= radius*radius {
 				l.Index = append(l.Index, int32(j))
-				l.Dist = append(l.Dist, d)
+				l.Dist = append(l.Dist, math.Sqrt(d2))
 			}
 		}
 		l.Start[i+1] = len(l.Index)
