@@ -103,12 +103,14 @@ const (
 	wantedRecall = 0.97
 )
 
-// approximate finds most of the nearest of every point and measures what share.
+// approximate finds most of the nearest of every point and measures what share. Longer lists cost about their length
+// squared: at 10 neighbours, lists of 14 gave recalls of 0.989 to 0.9996 and lists of 21 0.9988 to 1, at twice the
+// distances, on 40,000 points of 8 to 16 intrinsic dimensions in 16 to 64 columns.
 func (t *tree) approximate(ctx context.Context, k int, o Options) (*Lists, Report, error) {
 	places := sample(t.pts.N, recallSample, o.Seed^0xACE)
 	truth, computed := t.kthCloseness(ctx, places, k, o)
 	rep := Report{Engine: "descent", Sample: len(places), Distances: computed}
-	for pool := k + k/2 + 6; ; pool *= 2 {
+	for pool := k + k/4 + 2; ; pool *= 2 {
 		s, err := newDescent(t, pool)
 		if err != nil {
 			return nil, Report{}, err

@@ -34,7 +34,7 @@ type links struct {
 }
 
 const (
-	projectionTrees = 4
+	projectionTrees = 8
 	mostRounds      = 16
 	// settled is the share of list places that changed in the last round below which rounds end (delta of the paper).
 	settled = 0.0005
