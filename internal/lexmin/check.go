@@ -91,7 +91,9 @@ func (c *checker) run() error {
 		var most, sure, worst float64
 		for _, v := range p.vertices {
 			up, down := c.slopes(v)
-			most, sure, worst = max(most, up, down), max(sure, c.surest(v)), max(worst, math.Abs(up-down))
+			worst = max(worst, math.Abs(up-down))
+			least, greatest := c.steepest(v)
+			sure, most = max(sure, least), max(most, greatest)
 			if s := c.shift(v); s > c.report.Shift {
 				c.report.Shift, c.report.Worst = s, v
 			}
@@ -106,12 +108,14 @@ func (c *checker) run() error {
 	return nil
 }
 
-// surest is the steepest slope at v, each difference lessened by what rounding may have added.
-func (c *checker) surest(v int32) (most float64) {
+// steepest gives bounds on the steepest slope at v, each difference lessened and increased by what rounding may have
+// added or taken.
+func (c *checker) steepest(v int32) (least, greatest float64) {
 	for k := c.g.RowPtr[v]; k < c.g.RowPtr[v+1]; k++ {
-		most = max(most, (math.Abs(c.value[c.g.Col[k]]-c.value[v])-c.noise)/c.length[k])
+		d := math.Abs(c.value[c.g.Col[k]] - c.value[v])
+		least, greatest = max(least, (d-c.noise)/c.length[k]), max(greatest, (d+c.noise)/c.length[k])
 	}
-	return most
+	return least, greatest
 }
 
 // slopes gives the steepest slope up and down at v, equal where they differ by no more than rounding explains.
