@@ -51,7 +51,7 @@ const (
 //
 // The error is the source's, the solver's, or says that the labels do not fit the graph.
 func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*Decision, error) {
-	all := a.settings(l.Task)
+	all := a.Settings(l.Task)
 	d := &Decision{}
 	speak, why := speaking(l)
 	var fold []int32

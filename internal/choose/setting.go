@@ -55,8 +55,8 @@ var (
 	numberPs = []float64{DefaultNumberP, 2, 3}
 )
 
-// settings lists the settings to compare, the one to fall back on first.
-func (a Asked) settings(task Task) []Setting {
+// Settings lists the settings to compare, the one to fall back on first.
+func (a Asked) Settings(task Task) []Setting {
 	ps, ks, kernels, bands := a.P, a.Neighbors, a.Kernel, a.Bandwidth
 	if len(ps) == 0 {
 		ps = classPs
