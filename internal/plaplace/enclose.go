@@ -39,20 +39,18 @@ func (s *Solver) enclose(ctx context.Context, x point, w *work, allowed float64)
 			r := s.rowAt(x, v)
 			t := 0.0
 			if r.sum > 0 {
-				scale := math.Abs(w.b[v]) / math.Max(math.Abs(r.net), 1e-300)
-				if math.Abs(r.net) < r.err { // take the scale of the row from its curvature instead
-					scale = s.rowCurvature(w, v) / r.curv
-				}
-				t = 2 * (math.Abs(r.net) + r.err) * scale
+				t = 2 * (math.Abs(r.net) + r.err) * math.Exp(r.top-w.rowMax[v])
 			}
 			w.b[v] = t
 			m = max(m, t)
 		}
 		return m
 	})
-	spread = max(spread*spreadShare, 1e-18)
-	for _, v := range s.free {
-		w.b[v] += spread
+	if _, exact := s.engine.(*dense); !exact {
+		spread = max(spread*spreadShare, 1e-18)
+		for _, v := range s.free {
+			w.b[v] += spread
+		}
 	}
 	psi := w.x
 	if err := s.engine.solve(ctx, w.lc, w.rowMax, w.b, psi, 1e-3); err != nil {
@@ -88,16 +86,6 @@ func (s *Solver) enclose(ctx context.Context, x point, w *work, allowed float64)
 		c.width = max(c.width, c.upper[v]-c.lower[v])
 	}
 	return c, true, nil
-}
-
-// rowCurvature is sum_j exp(lc - rowMax) of row v: the curvature in the scale of the linear system.
-func (s *Solver) rowCurvature(w *work, v int) float64 {
-	g := s.graph
-	var c float64
-	for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
-		c += math.Exp(w.lc[s.slot[k]] - w.rowMax[v])
-	}
-	return c
 }
 
 func shift(out, h, psi []float64, e float64) {

@@ -27,6 +27,15 @@ func newIterative(s *Solver) *iterative {
 
 var _ engine = (*iterative)(nil)
 
+// method leaves the choice to laplace where it sees one system, p = 2; the reweighted systems of other p have contrasts
+// that a first look at the unweighted one does not show.
+func (it *iterative) method() laplace.Method {
+	if it.s.p == 2 || len(it.s.free) < 2000 {
+		return laplace.Auto
+	}
+	return laplace.Multigrid
+}
+
 // Widths of a band and of what is squeezed below it, natural logarithms: 14 and 12 decades.
 const (
 	band = 32.0
@@ -59,7 +68,7 @@ func (it *iterative) solve(ctx context.Context, lc, rowMax, b, x []float64, tole
 	})
 	var err error
 	if it.system == nil {
-		it.system, err = laplace.New(ctx, g.WithValues(val), s.fixed, laplace.Options{Workers: s.options.Workers})
+		it.system, err = laplace.New(ctx, g.WithValues(val), s.fixed, laplace.Options{Workers: s.options.Workers, Method: it.method()})
 	} else {
 		err = it.system.Reweight(ctx, val)
 	}

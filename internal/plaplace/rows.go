@@ -12,6 +12,7 @@ type row struct {
 	err  float64 // bound on the rounding error of net
 	curv float64 // sum_j d phi_ij / d f_i, over the same scale
 	step float64 // largest |difference|
+	top  float64 // ln of the largest flux, the unit of net, sum, err and curv
 }
 
 // rowAt gives the net flux of the point at vertex v, with a bound on everything that rounding can have done to it.
@@ -33,6 +34,7 @@ func (s *Solver) rowAt(x point, v int) row {
 	if math.IsInf(top, -1) {
 		return r
 	}
+	r.top = top
 	terms := 0.0
 	for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
 		d, bound := x.diffBound(int32(v), g.Col[k])

@@ -99,8 +99,11 @@ func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance flo
 	missed := func() bool {
 		return err == nil && !(cert.Width <= tolerance && cert.Gap <= min(tolerance, 1e-9))
 	}
-	if missed() {
-		err = attempt(polish)
+	for k := 0; k < 2 && missed(); k++ {
+		err = attempt(func() error {
+			_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, 1e-14, 1e-6, 4, true)
+			return err
+		})
 	}
 	for ; missed() && s.p < 2 && s.eps > 1e-40; s.eps *= 1e-5 {
 		err = attempt(polish)
