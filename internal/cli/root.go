@@ -43,7 +43,7 @@ how far to trust it. Settings that are not given are chosen from the table; ever
 	a.root.SetErr(s.err)
 	a.root.CompletionOptions.HiddenDefaultCmd = false
 	a.root.AddCommand(
-		a.checkCommand(), a.labelCommand(),
+		a.checkCommand(), a.labelCommand(), a.compareCommand(),
 		a.auditCommand(), a.nextCommand(), a.extendCommand(), a.assessCommand(), a.graphCommand(), a.demoCommand(), a.versionCommand(),
 	)
 	a.root.SetHelpFunc(a.help)
