@@ -17,7 +17,11 @@ type cutter struct {
 	carry []byte // start of a row whose end was not read yet
 	off   int64  // offset of carry's first byte in the text
 	eof   bool
+	ahead int // bytes to read for the next piece: few at first, so that a small table costs little, at most o.block
 }
+
+// firstAhead is how much is read for the first piece.
+const firstAhead = 1 << 14
 
 // piece is text of whole rows; only the last of a file may end without a line end.
 type piece struct {
@@ -31,7 +35,8 @@ func (c *cutter) next() (piece, error) {
 	if c.eof && len(c.carry) == 0 {
 		return piece{}, io.EOF
 	}
-	buf := make([]byte, len(c.carry), len(c.carry)+c.o.block)
+	c.ahead = min(max(2*c.ahead, firstAhead), c.o.block)
+	buf := make([]byte, len(c.carry), len(c.carry)+c.ahead)
 	copy(buf, c.carry)
 	scan := boundary{delim: c.o.Delimiter}
 	for {
@@ -49,7 +54,12 @@ func (c *cutter) next() (piece, error) {
 		scan.advance(buf)
 		if c.eof {
 			if scan.inside(buf) {
-				return piece{}, c.unclosed(buf, scan.open)
+				if scan.rowEnd == 0 {
+					return piece{}, c.unclosed(buf, scan.open)
+				}
+				p := c.cut(buf, scan.rowEnd) // the rows before it have their say first, as in smaller blocks
+				c.carry = buf[scan.rowEnd:]
+				return p, nil
 			}
 			c.carry = nil
 			if len(buf) == 0 {

@@ -101,10 +101,13 @@ var refusals = []struct {
 	{"space after a quote", "a,b\n\"x\" ,2\n", Options{}, "C10", 3, 2, 4, `"x" `, `column "a"`},
 	{"too few cells", "a,b,c\n1,2,3\n4,5\n6,7,8\n", Options{}, "C12", 3, 3, 4, "", "2 cells, 3 are expected"},
 	{"too many cells", "a,b\n1,2\n3,4,5\n6,7\n", Options{}, "C12", 3, 3, 5, "", "3 cells, 2 are expected"},
+	{"too few cells beside quotes", "a,b,c\n\"1\",2,3\n\"4\n\",5\n", Options{}, "C12", 3, 4, 4, "", "2 cells, 3 are expected"},
+	{"too many cells in quotes", "a,b\n\"1\",\"2\"\n\"3\",\"x\n,\",5\n", Options{}, "C12", 3, 4, 4, "", "3 cells, 2 are expected"},
 	{"cut last row", "a,b,c\n1,2,3\n4,5", Options{}, "C12", 3, 3, 4, "", "may be truncated"},
 	{"some trailing delimiters", "a,b\n1,2\n3,4,\n", Options{}, "C12", 3, 3, 5, "", "ends in a delimiter"},
 	{"trailing delimiter in header alone", "a,b,\n1,2\n", Options{}, "C12", 3, 2, 4, "", "the header ends in a delimiter"},
 	{"all trailing delimiters", "a,b,\n1,2,\n3,4,\n", Options{}, "C13", 3, 1, 5, "", "column 3 has no name"},
+	{"all trailing delimiters, quoted", "a,b,\n\"1,\",2,\n", Options{}, "C13", 3, 1, 5, "", "column 3 has no name"},
 	{"duplicate header", "x,y,x\n1,2,3\n", Options{}, "C14", 3, 1, 5, "", "columns 1 and 3"},
 	{"empty header", "x,,y\n1,2,3\n", Options{}, "C15", 3, 1, 3, "", "column 2 has no name"},
 	{"empty last header over values", "x,y,\n1,2,3\n", Options{}, "C15", 3, 1, 5, "", "column 3 has no name"},
@@ -113,6 +116,8 @@ var refusals = []struct {
 	{"header only, no line end", "a,b", Options{}, "C17", 3, 1, 0, "", "0 data rows"},
 	{"empty", "", Options{}, "C18", 3, 0, 0, "", "0 bytes"},
 	{"blank", "\n\r\n\n", Options{}, "C18", 3, 0, 0, "", "4 bytes"},
+	{"ragged, then unclosed", "a,b\n1\n" + strings.Repeat("1,2\n", 99) + "\"", Options{block: 64}, "C12", 3, 2, 2, "", "1 cells"},
+	{"ragged, then Latin-1", "a,b\n1\n\"2\",3\n\"4\",\"\xe9\n", Options{}, "C12", 3, 2, 2, "", ""},
 	{"byte-order mark alone", "\xef\xbb\xbf", Options{}, "C18", 3, 0, 0, "", ""},
 	{"blank line", "a,b\n1,2\n\n3,4\n", Options{}, "C19", 3, 3, 1, "", "blank line"},
 	{"blank line beside quotes", "a,b\n\"1\",2\n\n\n3,4\n", Options{}, "C19", 3, 3, 1, "", "blank line"},
@@ -122,6 +127,7 @@ var refusals = []struct {
 	{"huge quoted cell", "a,b\n1,2\n\"" + strings.Repeat("x\n", 200) + "\",3\n", Options{MaxField: 100}, "C20", 6, 3, 1, "", "--max-field"},
 	{"huge unclosed quote", "a,b\n1,2\n\"" + strings.Repeat("x,y\n", 1<<17), Options{MaxField: 100, block: 1 << 10}, "C20", 6, 3, 1, "", "still open"},
 	{"huge header cell", "a," + strings.Repeat("x", 200) + "\n1,2\n", Options{MaxField: 100}, "C20", 6, 1, 3, "", "--max-field"},
+	{"huge cell without an end", "a,b\n1," + strings.Repeat("x", 3000), Options{MaxField: 100, block: 64}, "C20", 6, 2, 3, "", "--max-field"},
 	{"many columns", strings.Repeat("a,", 50) + "b\n", Options{MaxColumns: 50}, "C21", 6, 1, 0, "", "--max-columns"},
 	{"a file of commas", strings.Repeat(",", 1<<20), Options{MaxColumns: 1000, block: 1 << 10}, "C21", 6, 1, 0, "", "--max-columns"},
 	{"many rows", "a\n1\n2\n3\n", Options{MaxRows: 2}, "C21", 6, 0, 0, "", "more than 2 rows"},
@@ -350,6 +356,27 @@ func TestSilentPipe(t *testing.T) {
 			t.Errorf("%v, want the context's cause", err)
 		}
 		r.Close()
+	}
+}
+
+// TestStreamKnowsColumns: the columns are known before the first batch, and the end is told as often as asked.
+func TestStreamKnowsColumns(t *testing.T) {
+	s, err := OpenStream(context.Background(), "-", strings.NewReader("a;b\n1;2\n"), Options{Delimiter: ';'})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer s.Close()
+	h := s.Head()
+	if h.Rows() != 0 || h.Columns() != 2 || h.Header(1) != "b" || h.Delimiter() != ';' || h.Name() != "-" {
+		t.Errorf("the head has %d rows and the columns %q", h.Rows(), h.Headers())
+	}
+	if batch, err := s.Next(); err != nil || batch.Rows() != 1 || batch.Text(0, 1) != "2" {
+		t.Errorf("first batch: %v", err)
+	}
+	for range 2 {
+		if _, err := s.Next(); err != io.EOF {
+			t.Errorf("%v, want EOF", err)
+		}
 	}
 }
 

@@ -33,6 +33,10 @@ func diagnose(cell []byte, decimal byte, err NumberError, column string) (code, 
 	case Underflow:
 		return "C28", err.Error(), "write 0 if that is meant, or rescale the column"
 	}
+	const longest = 400 // no damaged number is longer, and patterns take their time
+	if len(cell) > longest {
+		return "C25", err.Error(), drop
+	}
 	text := string(cell)
 	if c, m, h := oddCharacter(text); c != "" {
 		return c, m, h

@@ -3,11 +3,14 @@ package table
 import (
 	"context"
 	"fmt"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"strings"
 	"syscall"
 	"testing"
+
+	"pinfill/internal/fault"
 )
 
 const (
@@ -142,6 +145,79 @@ func checkAfterFault(t *testing.T, where string, states [3]string, strangers []s
 	// The fault may have hit the very removal of a temporary file: one can be left then.
 	if len(strangers) > 1 {
 		t.Errorf("temporary files left: %s", where)
+	}
+}
+
+// TestCompressedFaultLoop is TestFaultLoop for one compressed file, whose bytes are written late and by another hand.
+func TestCompressedFaultLoop(t *testing.T) {
+	for _, suffix := range []string{".gz", ".zst"} {
+		want := []byte(nil)
+		for k := int64(0); ; k++ {
+			path := filepath.Join(t.TempDir(), "t.csv"+suffix)
+			fsys := &faultyFS{k: k, errno: syscall.ENOSPC, short: true}
+			set := &Outputs{FS: fsys}
+			err := put(set, path, noise)
+			set.Abort()
+			text, _ := os.ReadFile(path)
+			if k == 0 {
+				want = text
+			}
+			e := firstFault(err)
+			switch {
+			case err == nil && string(text) != string(want):
+				t.Errorf("%s, call %d: success with %d bytes, want %d", suffix, k, len(text), len(want))
+			case err != nil && (e == nil || e.Exit != 4 || e.File != path):
+				t.Errorf("%s, call %d: %v is not a refusal with exit 4", suffix, k, err)
+			case e != nil && e.Code != "S03" && text != nil:
+				t.Errorf("%s, call %d: %d bytes in place after %v", suffix, k, len(text), err)
+			}
+			if k > fsys.calls.Load() {
+				break
+			}
+		}
+		if len(want) < sinkSize {
+			t.Errorf("%s: %d bytes are too few to be written in several calls", suffix, len(want))
+		}
+	}
+}
+
+// noise is text that compression cannot make small.
+var noise = func() string {
+	r := rand.New(rand.NewPCG(5, 9))
+	b := make([]byte, 4*sinkSize)
+	for i := range b {
+		b[i] = byte('0' + r.IntN(64))
+	}
+	return string(b)
+}()
+
+// TestManyRefusals: a file that is wrong throughout is refused in a time that grows with its size alone.
+func TestManyRefusals(t *testing.T) {
+	for name, text := range map[string]string{
+		"ragged":         "a,b\n" + strings.Repeat("1\n", 400_000),
+		"ragged, quoted": "a,b\n" + strings.Repeat("\"1\"\n", 400_000),
+		"CR":             "a,b\n" + strings.Repeat("1\r,2\n", 400_000),
+		"blank":          "a,b\n" + strings.Repeat("1,2\n\n", 400_000) + "1,2\n",
+		"after quotes":   "a,b\n" + strings.Repeat("\"1\"x,2\n", 400_000),
+		"no names":       strings.Repeat(",", 90_000) + "\n" + strings.Repeat("1,", 90_000) + "1\n",
+	} {
+		_, err := readText(text, Options{})
+		l, ok := err.(*fault.List)
+		if !ok || len(l.First) != shownAll || l.Total < 90_000 {
+			t.Errorf("%s: %v, want %d refusals and more counted", name, err, shownAll)
+		}
+	}
+	tab, err := readText("y"+strings.Repeat(",x", 90_000)+"\n"+"1"+strings.Repeat(",reef", 90_000)+"\n", Options{RepeatedNames: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	cols := make([]int, 90_001)
+	for c := range cols {
+		cols[c] = c
+	}
+	_, err = tab.Numbers(context.Background(), cols, NumberOptions{})
+	if l, ok := err.(*fault.List); !ok || l.Total != 90_000 {
+		t.Errorf("%v, want 90,000 refusals", err)
 	}
 }
 

@@ -19,7 +19,7 @@ func FuzzRead(f *testing.F) {
 		f.Add([]byte(c.text), byte(1))
 	}
 	f.Fuzz(func(t *testing.T, text []byte, block byte) {
-		if len(text) > 1<<16 {
+		if len(text) > 2000 { // the comparison is quadratic in the length of a row
 			return
 		}
 		o := Options{Delimiter: ',', Workers: 2, Memory: 1 << 28}
@@ -31,9 +31,7 @@ func FuzzRead(f *testing.F) {
 			if err == nil {
 				want = dump(whole)
 			}
-			if len(text) < 4000 || err != nil {
-				compareRuns(t, string(text), o.block, "Stream", small, err2, want, err)
-			}
+			compareRuns(t, string(text), o.block, "Stream", small, err2, want, err)
 		}
 		if err != nil {
 			if e := firstFault(err); e == nil || e.Code == "" || e.Exit == 0 || strings.ContainsAny(strings.ReplaceAll(e.Error(), "\n", "x"), "\x00\x1b\r") {

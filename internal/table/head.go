@@ -47,10 +47,10 @@ func readHead(h *head, p piece, o *Options) (piece, error) {
 		return p, tooManyColumns(h.name, 1, o.MaxColumns)
 	}
 	h.cols = cells
-	texts := make([][]byte, 0, cells)
+	texts, starts := make([][]byte, 0, cells), make([]int, 0, cells)
 	for start := 0; start <= len(line); {
 		e := cellEnd(line, start, h.delim)
-		texts = append(texts, decode(line[start:e]))
+		texts, starts = append(texts, decode(line[start:e])), append(starts, start)
 		start = e + 1
 	}
 	if err := h.wrongDelimiter(line); err != nil {
@@ -76,7 +76,7 @@ func readHead(h *head, p piece, o *Options) (piece, error) {
 	}
 	rest := piece{data: p.data[end:], off: p.off + int64(end)}
 	h.raw = p.data[:end:end]
-	return rest, h.checkNames(line, rest, o)
+	return rest, h.checkNames(line, starts, rest, o)
 }
 
 // headEnd finds the end of the first row, which must not be blank, and counts its cells.
@@ -84,7 +84,7 @@ func (h *head) headEnd(p piece) (end, cells int, err error) {
 	s := &scanned{}
 	w := walker{h: h, p: p, s: s, hasCR: bytes.IndexByte(p.data, '\r') >= 0}
 	end, cells = w.quotedRow(0)
-	if e := h.notText(piece{p.data[:end], p.off}); e != nil {
+	if e, _ := h.notText(piece{p.data[:end], p.off}); e != nil {
 		return 0, 0, e
 	}
 	if s.refused.Total > 0 {
@@ -121,10 +121,11 @@ func (h *head) wrongDelimiter(line []byte) error {
 	return nil
 }
 
-// checkNames refuses a header that is none, or whose names do not tell the columns apart.
-func (h *head) checkNames(line []byte, rest piece, o *Options) error {
+// checkNames refuses a header that is none, or whose names do not tell the columns apart. starts
+// says where its cells begin.
+func (h *head) checkNames(line []byte, starts []int, rest piece, o *Options) error {
 	place := func(col int, code, message, hint string) *fault.Error {
-		e := h.at(piece{data: line}, cellStart(line, col, h.delim), code, message)
+		e := h.at(piece{data: line}, starts[col], code, message)
 		e.Hint = hint
 		return e
 	}
@@ -154,11 +155,16 @@ func (h *head) checkNames(line []byte, rest piece, o *Options) error {
 	var refused fault.List
 	seen := make(map[string]int, h.cols)
 	for c, name := range h.names {
-		if len(trimSpace([]byte(name))) == 0 {
+		first, repeated := seen[name]
+		empty := len(trimSpace([]byte(name))) == 0
+		if (empty || repeated) && skip(&refused) {
+			continue
+		}
+		if empty {
 			refused.Add(place(c, "C15", fmt.Sprintf("column %d has no name", c+1), "give it one"))
 			continue
 		}
-		if first, ok := seen[name]; ok {
+		if repeated {
 			e := place(c, "C14", fmt.Sprintf("columns %d and %d have the same name", first+1, c+1), fmt.Sprintf("rename one, or choose by number: #%d, #%d", first+1, c+1))
 			e.Name = name
 			refused.Add(e)
@@ -174,6 +180,15 @@ func (h *head) firstRow(p piece) []byte {
 	w := walker{h: h, p: p, s: &scanned{}}
 	end, _ := w.quotedRow(0)
 	return trimEnd(p.data[:end])
+}
+
+// skip counts a refusal for which a list has no place left, so that nobody need find out where it stands.
+func skip(l *fault.List) bool {
+	if len(l.First) < shownAll {
+		return false
+	}
+	l.Total++
+	return true
 }
 
 // single gives the one refusal of a list as itself, several as the list, none as nil.

@@ -68,6 +68,18 @@ func TestNumberRandom(t *testing.T) {
 	if testing.Short() {
 		n = 30_000
 	}
+	// Nineteen digits just below a power of two: the mantissa rounds up to the next binade.
+	for k := -200; k <= 200; k++ {
+		text := []byte(strconv.FormatFloat(math.Ldexp(1, k), 'e', 18, 64))
+		for i := len("1.000000000000000000") - 1; text[i] != '.'; i-- {
+			if text[i] > '0' {
+				text[i]--
+				break
+			}
+			text[i] = '9'
+		}
+		checkNumber(t, string(text))
+	}
 	r := rand.New(rand.NewPCG(71, 3))
 	for range n {
 		x := math.Float64frombits(r.Uint64())

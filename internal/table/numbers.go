@@ -28,6 +28,7 @@ type Numbers struct {
 const (
 	rowGrain  = 2048 // rows a worker takes at a time
 	shownEach = 5    // refusals listed for one column, so that it does not hide another; all are counted
+	shownAll  = 20   // refusals worth their position in one run of rows, as many as a fault.List shows
 )
 
 // maxWhole is 2^53; up to it every whole number has a float64 of its own.
@@ -104,7 +105,7 @@ func (o NumberOptions) withDefaults(t *Table) NumberOptions {
 // part is what one run of rows has to say beside its numbers.
 type part struct {
 	missing, trimmed, big int
-	refused               []*fault.Error // at most shownEach a column
+	refused               []*fault.Error // at most shownEach a column and shownAll in all
 	shown                 map[int]int
 	more                  int
 }
@@ -192,7 +193,7 @@ func (p *part) refuse(t *Table, row, col int, decimal byte) {
 	if p.shown == nil {
 		p.shown = map[int]int{}
 	}
-	if p.shown[col]++; p.shown[col] > shownEach {
+	if p.shown[col]++; p.shown[col] > shownEach || len(p.refused) == shownAll {
 		p.more++
 		return
 	}

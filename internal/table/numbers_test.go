@@ -3,6 +3,7 @@ package table
 import (
 	"context"
 	"crypto/sha256"
+	"errors"
 	"math"
 	"strings"
 	"testing"
@@ -111,6 +112,27 @@ func TestNumbersValues(t *testing.T) {
 	}
 	if !tab.Missing(2, 2) || !tab.Missing(2, 1) || !tab.Missing(3, 1) || tab.Missing(0, 1) {
 		t.Error("missing cells are those empty or named by NA")
+	}
+}
+
+func TestNumbersStop(t *testing.T) {
+	tab, err := readText("x,y\n1,2\n", Options{Memory: 1 << 12, block: 64})
+	if err != nil {
+		t.Fatal(err)
+	}
+	tab.head.memory = 15 // two numbers need 16 bytes
+	_, err = tab.Numbers(context.Background(), []int{0, 1}, NumberOptions{})
+	if e := firstFault(err); e == nil || e.Code != "S15" || e.Exit != 6 {
+		t.Errorf("%v, want S15 with exit 6", err)
+	}
+	ctx, cancel := context.WithCancelCause(context.Background())
+	cause := errors.New("enough")
+	cancel(cause)
+	if _, err := tab.Numbers(ctx, []int{0}, NumberOptions{}); err != cause {
+		t.Errorf("%v, want the context's cause", err)
+	}
+	if e := tab.NumberFault(0, 0, 0); e != nil {
+		t.Errorf("a number is refused: %v", e)
 	}
 }
 

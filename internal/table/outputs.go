@@ -120,7 +120,7 @@ func (o *Outputs) Create(name string) (*Output, error) {
 		if f.file, err = o.fs().OpenFile(path, os.O_WRONLY, 0); err != nil {
 			return nil, folderFault(name, err)
 		}
-		f.sink = newSink(f, f.file, path)
+		f.sink = newSink(f, f.file, name)
 	default:
 		if f.file, f.temp, err = o.temporary(path, name, 0o666); err != nil {
 			return nil, err
@@ -132,7 +132,7 @@ func (o *Outputs) Create(name string) (*Output, error) {
 				return nil, f.fault(err)
 			}
 		}
-		f.sink = newSink(f, f.file, path)
+		f.sink = newSink(f, f.file, name)
 	}
 	o.files = append(o.files, f)
 	return f, nil

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"compress/gzip"
 	"errors"
+	"fmt"
 	"io"
 	"os"
 	"path/filepath"
@@ -216,6 +217,57 @@ func TestCompressedOutputs(t *testing.T) {
 		}
 		if got, err := io.ReadAll(plain); err != nil || string(got) != text {
 			t.Errorf("%s does not unpack to what was written: %v", suffix, err)
+		}
+	}
+}
+
+// TestDescriptorLinks: a name like /dev/stdout is a link that only the system can follow.
+func TestDescriptorLinks(t *testing.T) {
+	r, w, err := os.Pipe()
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer r.Close()
+	path := fmt.Sprintf("/proc/self/fd/%d", w.Fd())
+	if _, err := os.Stat(path); err != nil {
+		t.Skip("no /proc")
+	}
+	if err := put(&Outputs{}, path, "through"); err != nil {
+		t.Error(err)
+	}
+	w.Close()
+	if text, err := io.ReadAll(r); err != nil || string(text) != "through" {
+		t.Errorf("the pipe gave %q (%v)", text, err)
+	}
+}
+
+// fewWrites is a writer that fails after some writes.
+type fewWrites struct{ left int }
+
+func (f *fewWrites) Write(p []byte) (int, error) {
+	if f.left == 0 {
+		return 0, syscall.EIO
+	}
+	f.left--
+	return len(p), nil
+}
+
+// TestAppendFails: every write that fails is told.
+func TestAppendFails(t *testing.T) {
+	for _, text := range []string{"a\n" + strings.Repeat("1\n", 2*rowGrain), "a,b\n1,2\n" + strings.Repeat("\n", 400)} {
+		tab, err := readText(text, Options{block: 64})
+		if err != nil {
+			t.Fatal(err)
+		}
+		failed := 0
+		for {
+			if err = WriteAppended(&fewWrites{failed}, tab, nil); err == nil {
+				break
+			}
+			failed++
+		}
+		if failed < 3 {
+			t.Errorf("%.20q: only %d writes can fail", text, failed)
 		}
 	}
 }

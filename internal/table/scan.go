@@ -36,13 +36,13 @@ type scanned struct {
 // scan finds the rows of a piece and checks their shape. It depends on the piece alone.
 func (h *head) scan(p piece, last bool) *scanned {
 	s := &scanned{block: block{data: p.data}}
-	if e := h.notText(p); e != nil {
+	e, stop := h.notText(p)
+	if e != nil {
 		s.fatal = e
-		return s
 	}
 	s.lines = bytes.Count(p.data, []byte{'\n'})
 	s.starts = make([]uint32, 0, s.lines+2)
-	w := walker{h: h, p: p, s: s, last: last, hasCR: bytes.IndexByte(p.data, '\r') >= 0}
+	w := walker{h: h, p: p, s: s, last: last, stop: stop, hasCR: bytes.IndexByte(p.data, '\r') >= 0}
 	if bytes.IndexByte(p.data, '"') < 0 {
 		w.plain()
 	} else {
@@ -51,15 +51,15 @@ func (h *head) scan(p piece, last bool) *scanned {
 	return s
 }
 
-// notText refuses bytes that are no text: NUL, invalid UTF-8. It gives nil for text.
-func (h *head) notText(p piece) *fault.Error {
+// notText refuses bytes that are no text, NUL or invalid UTF-8, and says where in p they are. It gives nil for text.
+func (h *head) notText(p piece) (*fault.Error, int) {
 	pos, code, message, hint := checkText(p.data)
 	if pos < 0 {
-		return nil
+		return nil, len(p.data)
 	}
 	e := h.at(p, pos, code, fmt.Sprintf("%s (offset %d)", message, p.off+int64(pos)))
 	e.Hint = hint
-	return e
+	return e, pos
 }
 
 // walker goes through the rows of one piece.
@@ -68,6 +68,7 @@ type walker struct {
 	p     piece
 	s     *scanned
 	last  bool // the piece ends the file
+	stop  int  // rows that reach beyond it are left alone: a byte that is no text stands there
 	hasCR bool
 
 	end   int // end of the last row that is not blank
@@ -82,6 +83,9 @@ func (w *walker) plain() {
 		next := len(data)
 		if i := bytes.IndexByte(data[pos:], '\n'); i >= 0 {
 			next = pos + i + 1
+		}
+		if next > w.stop {
+			break
 		}
 		row := trimEnd(data[pos:next])
 		if w.row(pos, next, row) {
@@ -102,7 +106,12 @@ func (w *walker) quoted() {
 	w.blank = -1
 	data := w.p.data
 	for pos := 0; pos < len(data); {
+		before := w.s.refused
 		next, cells := w.quotedRow(pos)
+		if next > w.stop {
+			w.s.refused = before
+			break
+		}
 		row := trimEnd(data[pos:next])
 		if w.row(pos, next, row) && cells != w.h.cols {
 			w.ragged(pos, next, row, cells)
@@ -122,7 +131,7 @@ func (w *walker) quotedRow(pos int) (next, cells int) {
 			if bytes.IndexByte(data[pos:end], '\n') >= 0 {
 				w.s.multi = true
 			}
-			if end < len(data) && data[end] != delim && !atLineEnd(data, end) {
+			if end < len(data) && data[end] != delim && !atLineEnd(data, end) && !skip(&w.s.refused) {
 				e := w.h.at(w.p, end, "C10", "text after the closing quote")
 				e.Name = w.h.nameOf(cells - 1)
 				e.Value = string(data[pos:min(cellEnd(data, pos, delim), end+40)])
@@ -168,7 +177,9 @@ func (w *walker) row(pos, next int, row []byte) bool {
 		return false
 	}
 	if w.blank >= 0 {
-		w.s.refused.Add(w.h.blankLine(w.p, w.blank))
+		if !skip(&w.s.refused) {
+			w.s.refused.Add(w.h.blankLine(w.p, w.blank))
+		}
 		w.blank = -1
 	}
 	w.s.starts = append(w.s.starts, uint32(pos))
@@ -194,6 +205,9 @@ func (h *head) blankLine(p piece, pos int) *fault.Error {
 
 // ragged refuses a row of n cells.
 func (w *walker) ragged(pos, next int, row []byte, n int) {
+	if skip(&w.s.refused) {
+		return
+	}
 	at := pos + len(row)
 	if n > w.h.cols {
 		at = pos + cellStart(row, w.h.cols, w.h.delim)
@@ -227,7 +241,7 @@ func (w *walker) longCell(pos int, row []byte) {
 
 // loneCR refuses a carriage return that stands alone in a row without quotes.
 func (w *walker) loneCR(pos int, row []byte) {
-	if i := bytes.IndexByte(row, '\r'); i >= 0 {
+	if i := bytes.IndexByte(row, '\r'); i >= 0 && !skip(&w.s.refused) {
 		w.s.refused.Add(w.h.loneCR(w.p, pos+i))
 	}
 }

@@ -29,14 +29,14 @@ type sink struct {
 	owner  *Output
 }
 
-func newSink(owner *Output, out io.Writer, path string) *sink {
+func newSink(owner *Output, out io.Writer, name string) *sink {
 	s := &sink{out: out, hash: sha256.New(), owner: owner}
 	s.in = (*raw)(s)
 	switch {
-	case strings.HasSuffix(path, ".gz"):
+	case strings.HasSuffix(name, ".gz"):
 		z, _ := gzip.NewWriterLevel((*raw)(s), gzip.DefaultCompression) // no name and no time in the header: same bytes
 		s.pack, s.in = z, z
-	case strings.HasSuffix(path, ".zst"):
+	case strings.HasSuffix(name, ".zst"):
 		z, _ := zstd.NewWriter((*raw)(s), zstd.WithEncoderConcurrency(1)) // one worker: the same bytes on any machine
 		s.pack, s.in = z, z
 	}

@@ -111,7 +111,7 @@ func (s *Stream) begin(o *Options) (*piece, *cutter, error) {
 	if bytes.HasPrefix(start, utf8Mark) {
 		s.head.mark, start = start[:3:3], start[3:]
 	}
-	cut := &cutter{in: s.src, o: o, name: s.head.name, off: int64(len(s.head.mark)), carry: start}
+	cut := &cutter{in: io.MultiReader(bytes.NewReader(start), s.src), o: o, name: s.head.name, off: int64(len(s.head.mark))}
 	blank := 0
 	for {
 		p, err := cut.next()
