@@ -40,3 +40,14 @@ var mixed = []testproblems.Options{
 	{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
 	{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
 }
+
+// The least steepest slope any interpolation can have, by linear programming: SciPy 1.10.1's linprog, run once by
+// internal/testproblems/testdata/scipy.py.
+func TestSteepestSlopeIsSciPysMinimax(t *testing.T) {
+	for _, r := range testproblems.SciPy() {
+		got := r.Inf.SteepestSlope(solve(t, r.Inf, 1))
+		if !(math.Abs(got/r.Minimax-1) <= testproblems.MinimaxTolerance) {
+			t.Errorf("%s: steepest slope %v, linprog %v", r.Inf.Name, got, r.Minimax)
+		}
+	}
+}
