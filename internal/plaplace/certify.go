@@ -73,7 +73,6 @@ func (s *Solver) balance(x point) (gap, imbalance float64) {
 		}
 		return t
 	})
-	g := s.graph
 	worst := make([]float64, (s.n+rowChunk-1)/rowChunk)
 	flow := make([]float64, len(worst))
 	parallel.ForChunk(s.workers, s.n, rowChunk, func(_, chunk, lo, hi int) {
@@ -85,12 +84,7 @@ func (s *Solver) balance(x point) (gap, imbalance float64) {
 			if r.step > imbalanceFloor && r.sum > 0 {
 				worst[chunk] = max(worst[chunk], math.Abs(r.net)/r.sum)
 			}
-			var net float64
-			for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
-				d := x.diff(int32(v), g.Col[k])
-				net += math.Copysign(math.Exp(g.Val[k]+(s.p-1)*(slope(g.Val[k], d)-top)), d)
-			}
-			flow[chunk] += math.Abs(net)
+			flow[chunk] += math.Abs(r.net) * math.Exp(r.top-(s.p-1)*top)
 		}
 	})
 	var total float64

@@ -54,20 +54,22 @@ var ErrP = errors.New("p must be a finite number above 1")
 // Solver is a graph with its fixed vertices and p, ready to be solved for values. It must not be used by two
 // goroutines at once.
 type Solver struct {
-	p       float64
-	n       int
-	workers int
-	options Options
-	graph   *sparse.CSR // Val holds ln w, the largest 0
-	fixed   []int32
-	free    []int32
-	isFixed []bool
-	slot    []int32 // edge of each stored entry of graph
-	eu, ev  []int32 // ends of each edge, eu < ev
-	ea      []float64
-	engine  engine
-	eps     float64 // differences count as at least this, p < 2 only
-	counts  Counts
+	p                float64
+	n                int
+	workers          int
+	options          Options
+	graph            *sparse.CSR // Val holds ln w, the largest 0
+	fixed            []int32
+	free             []int32
+	isFixed          []bool
+	slot             []int32 // edge of each stored entry of graph
+	eu, ev           []int32 // ends of each edge, eu < ev
+	ea               []float64
+	engine           engine
+	conductance      []float64 // w^2 by stored entry, p = 2 only, else nil
+	conductanceError float64   // relative error of each
+	eps              float64   // differences count as at least this, p < 2 only
+	counts           Counts
 }
 
 // New prepares a solver. Val of g holds ln w; fixed is strictly increasing; every component must hold a fixed vertex.
@@ -88,6 +90,9 @@ func New(ctx context.Context, g *sparse.CSR, fixed []int32, p float64, o Options
 		}
 	}
 	s.layoutEdges()
+	if p == 2 {
+		s.layoutLinear()
+	}
 	if len(s.free) <= denseLimit {
 		s.engine = newDense(s)
 	} else {

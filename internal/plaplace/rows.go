@@ -1,6 +1,10 @@
 package plaplace
 
-import "math"
+import (
+	"math"
+
+	"pinfill/internal/parallel"
+)
 
 // unit is the unit round-off of float64.
 const unit = 0x1p-53
@@ -22,6 +26,9 @@ type row struct {
 // A flux is exp(p a + (p-1) ln|d|). Its exponent carries the error of each product and of the logarithm, its d the
 // error that diffBound gives; where d is lost in its own error, the whole flux counts as error.
 func (s *Solver) rowAt(x point, v int) row {
+	if s.conductance != nil {
+		return s.linearRowAt(x, v)
+	}
 	g := s.graph
 	top := math.Inf(-1)
 	var r row
@@ -71,4 +78,43 @@ func (s *Solver) rowAt(x point, v int) row {
 	}
 	r.err += 1.1 * unit * terms * r.sum
 	return r
+}
+
+// linearRowAt is rowAt for p = 2: a flux is conductance times difference, and no power need be taken. The unit is 1.
+func (s *Solver) linearRowAt(x point, v int) row {
+	g := s.graph
+	var r row
+	lo, hi := g.RowPtr[v], g.RowPtr[v+1]
+	for k := lo; k < hi; k++ {
+		d, bound := x.diffBound(int32(v), g.Col[k])
+		c := s.conductance[k]
+		phi := float64(c * d)
+		size := math.Abs(phi)
+		r.net += phi
+		r.sum += size
+		r.err += size*s.conductanceError + float64(c*bound)
+		r.curv += c
+		r.step = max(r.step, math.Abs(d))
+	}
+	r.err = 1.01*r.err + 1.1*unit*float64(hi-lo+2)*r.sum
+	return r
+}
+
+// layoutLinear keeps w^2 for p = 2, unless some weight is so small that it would vanish.
+func (s *Solver) layoutLinear() {
+	const smallest = -150 // e^-300 is far from the subnormal numbers
+	g := s.graph
+	for _, a := range g.Val {
+		if a < smallest {
+			return
+		}
+	}
+	c := make([]float64, len(g.Val))
+	parallel.For(s.workers, len(c), edgeChunk, func(lo, hi int) {
+		for k := lo; k < hi; k++ {
+			c[k] = math.Exp(2 * g.Val[k])
+		}
+	})
+	s.conductance = c
+	s.conductanceError = 4 * unit // 2 a is exact, the exponential is within 1 unit in the last place
 }
