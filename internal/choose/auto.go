@@ -42,6 +42,9 @@ const (
 	// study's tables lost half a point by moving.
 	classMargin  = 2
 	numberMargin = 1
+	// largeWork is the number of stored edges times classes above which Auto tries no second setting, and takes p = 2 for
+	// classes: there a solve at p = 1.7 takes tens of times as long.
+	largeWork = 20_000_000
 )
 
 // Auto chooses the setting. The first setting of Asked, or the study's default, stands unless leave-out shows another
@@ -65,8 +68,10 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 		}
 	}
 	t := trial{energy: o.Energy, labels: l, fold: fold, solve: solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers}, measure: true}
-	for i, s := range all {
-		if fold == nil && !o.Scores && len(d.Scores) > 0 && d.Scores[0].Certified {
+	var first error
+	for i := 0; i < len(all); i++ {
+		s := all[i]
+		if t.fold == nil && !o.Scores && len(d.Scores) > 0 && d.Scores[0].Certified {
 			break // nothing to compare: the first that holds stands
 		}
 		if t.graph == nil || !s.sameGraph(all[i-1]) {
@@ -78,17 +83,49 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 		if err := l.Validate(t.graph.N); err != nil {
 			return nil, err
 		}
+		if i == 0 && !fixed && !o.Scores && t.graph.NNZ()*len(l.Target) > largeWork {
+			t.fold, why = nil, "the table is too large to try several settings by default"
+			if len(a.P) == 0 && l.Task == Classes {
+				all = withP(all, 2)
+				s = all[0]
+				why += ", and p=2 solves fastest"
+			}
+		}
 		sc, err := t.score(ctx, s, nil)
 		if err != nil {
-			return nil, err
+			if fixed || ctx.Err() != nil {
+				return nil, err
+			}
+			if first == nil {
+				first = err
+			}
+			d.Warnings = append(d.Warnings, fmt.Sprintf("%s could not be solved on this graph and was passed over: %v", s.describe(all), err))
+			continue
 		}
 		d.Scores = append(d.Scores, sc)
 		if o.Progress != nil {
 			o.Progress(float64(i+1) / float64(len(all)))
 		}
 	}
-	d.settle(l, all, fold != nil, fixed, why)
+	if len(d.Scores) == 0 {
+		return nil, first
+	}
+	d.settle(l, all, t.fold != nil, fixed, why)
 	return d, nil
+}
+
+// withP keeps the settings at one p; with none there, all of them.
+func withP(all []Setting, p float64) []Setting {
+	var some []Setting
+	for _, s := range all {
+		if s.P == p {
+			some = append(some, s)
+		}
+	}
+	if len(some) == 0 {
+		return all
+	}
+	return some
 }
 
 // speaking says whether there are labels enough to leave some out, or why not.
@@ -181,7 +218,7 @@ func (d *Decision) settle(l Labels, all []Setting, compared, fixed bool, why str
 	if skipped && !fixed && d.Scores[0] != c {
 		d.Warnings = append(d.Warnings, fmt.Sprintf("%s could not be certified on this graph and was passed over", d.Scores[0].describe(all)))
 	}
-	d.warn(l)
+	d.Warnings = append(d.Warnings, c.alarms(l)...)
 }
 
 // paired gives the mean of a less b over the labels that both answer, and its standard error.
@@ -210,6 +247,3 @@ func taskText(t Task) string {
 	}
 	return "classes"
 }
-
-// warn adds the degeneracy warnings for the chosen setting.
-func (d *Decision) warn(l Labels) {}

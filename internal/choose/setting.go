@@ -43,8 +43,9 @@ const (
 	DefaultClassP = 1.7
 	// DefaultNumberP is large because numbers are smooth along the table: small p sinks into spikes at the labels.
 	DefaultNumberP = 6
-	// localClass is the factor on local scales for classes, a conductance exp(-2.8 d^2/(s_i s_j)) at p = 2.
-	localClass = 0.6
+	// localClass is the factor on local scales for classes, a conductance exp(-2 d^2/(s_i s_j)) at p = 2: narrower than usual, so
+	// that long edges, among them the shortcuts across a bend, carry little.
+	localClass = 0.7
 	// localNumber is the same for numbers.
 	localNumber = 1
 )

@@ -17,7 +17,7 @@ import (
 var (
 	rates   = []int{1, 2, 5, 10}                   // labels a class
 	classPs = []float64{1.7, 2, 3, 6, math.Inf(1)} // the first three are the rule's own candidates
-	local   = graph.Bandwidth{Local: true, H: 0.6} // the rule's default for classes
+	local   = graph.Bandwidth{Local: true, H: 0.7} // the rule's default for classes
 	plain   = graph.Bandwidth{Local: true, H: 1}   // the yardstick's
 )
 
