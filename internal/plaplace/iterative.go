@@ -175,3 +175,35 @@ func (it *iterative) solveLow(ctx context.Context, lc, rowMax, b, x []float64, t
 	}
 	return nil
 }
+
+// Quadratics gives guesses for Solve, the p = 2 solution for each set of values, found together: one pass over
+// the matrix serves several. It gives nil where Solve needs none, the system being small.
+func (s *Solver) Quadratics(ctx context.Context, values [][]float64) ([]Guess, error) {
+	it, large := s.engine.(*iterative)
+	if !large {
+		return nil, nil
+	}
+	val := make([]float64, s.graph.NNZ())
+	parallel.For(s.workers, len(val), edgeChunk, func(lo, hi int) {
+		for k := lo; k < hi; k++ {
+			val[k] = math.Exp(max(2*s.graph.Val[k], -room-band))
+		}
+	})
+	var err error
+	if it.system == nil {
+		it.system, err = laplace.New(ctx, s.graph.WithValues(val), s.fixed, laplace.Options{Workers: s.options.Workers, Method: it.method()})
+	} else {
+		err = it.system.Reweight(ctx, val)
+	}
+	if err != nil {
+		return nil, err
+	}
+	guesses := make([]Guess, len(values))
+	out := make([][]float64, len(values))
+	for k := range out {
+		out[k] = make([]float64, s.n)
+		guesses[k] = Guess{Values: out[k], Quadratic: true}
+	}
+	_, err = it.system.SolveDirichlet(ctx, values, out, s.firstTolerance())
+	return guesses, err
+}

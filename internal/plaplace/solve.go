@@ -11,13 +11,19 @@ const (
 	widest      = 1e-6 // no enclosure wider than this is looked for, a share of the range
 )
 
-// Solve finds the minimiser with the given values, in [0, 1], at the fixed vertices. start is a guess, one value a
-// vertex, or nil; with a guess p is not approached step by step. tolerance is the width to be certified.
-func (s *Solver) Solve(ctx context.Context, values, start []float64, tolerance float64) (Result, error) {
+// Guess is where Solve starts.
+type Guess struct {
+	Values    []float64 // one a vertex; nil for none
+	Quadratic bool      // Values solve p = 2: p is still approached step by step. Otherwise it is not
+}
+
+// Solve finds the minimiser with the given values, in [0, 1], at the fixed vertices. tolerance is the width to be
+// certified.
+func (s *Solver) Solve(ctx context.Context, values []float64, guess Guess, tolerance float64) (Result, error) {
 	s.counts, s.eps = Counts{}, 0
 	f := make([]float64, s.n)
-	if start != nil {
-		copy(f, start)
+	if guess.Values != nil {
+		copy(f, guess.Values)
 		for v := range f {
 			f[v] = min(max(f[v], 0), 1)
 		}
@@ -27,7 +33,7 @@ func (s *Solver) Solve(ctx context.Context, values, start []float64, tolerance f
 	}
 	w := s.newWork()
 	x := point{f: f}
-	if err := s.descend(ctx, x, w, start != nil); err != nil {
+	if err := s.descend(ctx, x, w, guess); err != nil {
 		return Result{Values: f, Counts: s.counts}, err
 	}
 	return s.finish(ctx, f, w, tolerance)
@@ -35,14 +41,15 @@ func (s *Solver) Solve(ctx context.Context, values, start []float64, tolerance f
 
 // descend brings x near the minimiser: from the p = 2 solution towards p by factors of 1.5 (Burrus, Barreto and
 // Selesnick 1994), or, for p < 2, by decreasing smoothing.
-func (s *Solver) descend(ctx context.Context, x point, w *work, warm bool) error {
-	if !warm {
-		tolerance := 1e-3
-		if s.p == 2 {
-			tolerance = 1e-8
+func (s *Solver) descend(ctx context.Context, x point, w *work, guess Guess) error {
+	if guess.Values == nil || guess.Quadratic {
+		if guess.Values == nil {
+			if _, err := s.iterate(ctx, x, w, 2, 0, rowPad, 0, s.firstTolerance(), 1, false); err != nil {
+				return err
+			}
 		}
-		if _, err := s.iterate(ctx, x, w, 2, 0, rowPad, 0, tolerance, 1, false); err != nil || s.p == 2 {
-			return err
+		if s.p == 2 {
+			return nil
 		}
 		for p := 1.5 * 2.0; p < s.p; p *= 1.5 {
 			if _, err := s.iterate(ctx, x, w, p, 0, rowPad, 0.1, loose, 30, false); err != nil {
@@ -60,6 +67,14 @@ func (s *Solver) descend(ctx context.Context, x point, w *work, warm bool) error
 	}
 	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, 1e-4, loose, 60, false)
 	return err
+}
+
+// firstTolerance is that of the linear system for p = 2: the answer itself, or a first guess.
+func (s *Solver) firstTolerance() float64 {
+	if s.p == 2 {
+		return 1e-8
+	}
+	return 1e-3
 }
 
 // leastSmoothing is the eps, for p < 2, at which the answer is first certified.

@@ -47,3 +47,34 @@ func BenchmarkRun(b *testing.B) {
 		}
 	}
 }
+
+// BenchmarkClasses times ten sets of values on one graph at p = 2 and prints the ratio to one.
+func BenchmarkClasses(b *testing.B) {
+	pr := problemOf(testproblems.Cloud(1, 100_000, 2, 10, 100))
+	pr.P = 2
+	sets := make([][]float64, 10)
+	for c := range sets {
+		sets[c] = make([]float64, len(pr.Values))
+		for k := range sets[c] {
+			if k%10 == c {
+				sets[c][k] = 1
+			}
+		}
+	}
+	one := 0.0
+	for _, count := range []int{1, 10} {
+		b.Run(fmt.Sprintf("classes=%d", count), func(b *testing.B) {
+			begin := time.Now()
+			for b.Loop() {
+				if _, err := RunMany(context.Background(), pr, sets[:count], nil, Settings{}); err != nil {
+					b.Fatal(err)
+				}
+			}
+			each := time.Since(begin).Seconds() / float64(b.N)
+			if count == 1 {
+				one = each
+			}
+			b.ReportMetric(each/one, "x_one")
+		})
+	}
+}

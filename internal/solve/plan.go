@@ -14,6 +14,7 @@ type plan struct {
 	regions  []region
 	anchor   []int32            // vertex whose value each pendant vertex takes, or -1
 	engines  []*plaplace.Solver // one a region, made when first used; finite p
+	guesses  [][]plaplace.Guess // by region, then by set of values; nil where there are none
 	progress func(share float64)
 }
 
@@ -50,8 +51,66 @@ func (c scale) value(t float64) float64 {
 	return min(max(c.least+float64(t*c.size), c.least), c.least+c.size)
 }
 
-// run solves for one set of values.
-func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error) {
+// prepare finds starting points for several sets of values at once in the large regions, for finite p.
+func (pl *plan) prepare(ctx context.Context, values [][]float64) error {
+	pl.guesses = make([][]plaplace.Guess, len(pl.regions))
+	if math.IsInf(pl.problem.P, 1) {
+		return nil
+	}
+	for c := range pl.regions {
+		r := &pl.regions[c]
+		var shares [][]float64
+		var which []int
+		for set := range values {
+			y := r.pick(values[set])
+			own := scaleOf(y)
+			if own.size == 0 {
+				continue
+			}
+			for k := range y {
+				y[k] = own.share(y[k])
+			}
+			shares = append(shares, y)
+			which = append(which, set)
+		}
+		if len(shares) < 2 || r.free < largeRegion {
+			continue
+		}
+		s, err := pl.engine(ctx, c)
+		if err != nil {
+			return err
+		}
+		got, err := s.Quadratics(ctx, shares)
+		if err != nil {
+			return err
+		}
+		if got == nil {
+			continue
+		}
+		pl.guesses[c] = make([]plaplace.Guess, len(values))
+		for k, set := range which {
+			pl.guesses[c][set] = got[k]
+		}
+	}
+	return nil
+}
+
+// pick gives the values at the region's fixed vertices.
+func (r *region) pick(values []float64) []float64 {
+	y := make([]float64, len(r.given))
+	for k, g := range r.given {
+		y[k] = values[g]
+	}
+	return y
+}
+
+const (
+	together    = 8    // sets of values whose starting points are held at a time
+	largeRegion = 1000 // free vertices from which that pays
+)
+
+// run solves for one set of values, number set of those that have guesses.
+func (pl *plan) run(ctx context.Context, set int, values, start []float64) (Result, error) {
 	n := pl.problem.Graph.N
 	res := Result{Values: make([]float64, n), Status: Trivial}
 	for k, v := range pl.problem.Fixed {
@@ -64,16 +123,13 @@ func (pl *plan) run(ctx context.Context, values, start []float64) (Result, error
 			return Result{Status: Stopped}, err
 		}
 		r := &pl.regions[c]
-		y := make([]float64, len(r.given))
-		for k, g := range r.given {
-			y[k] = values[g]
-		}
+		y := r.pick(values)
 		own := scaleOf(y)
 		if own.size == 0 {
 			for _, v := range r.vertices {
 				res.Values[v] = own.least
 			}
-		} else if err := pl.runRegion(ctx, c, y, own, whole, start, &res); err != nil {
+		} else if err := pl.runRegion(ctx, c, set, y, own, whole, start, &res); err != nil {
 			return Result{Status: Stopped}, err
 		}
 		done += r.free
@@ -131,8 +187,9 @@ func (pl *plan) engine(ctx context.Context, c int) (*plaplace.Solver, error) {
 	return pl.engines[c], nil
 }
 
-// runRegion solves region c for the values y at its fixed vertices and adds what it finds to res.
-func (pl *plan) runRegion(ctx context.Context, c int, y []float64, own, whole scale, start []float64, res *Result) error {
+// runRegion solves region c for the values y at its fixed vertices, number set of those that have guesses, and adds
+// what it finds to res.
+func (pl *plan) runRegion(ctx context.Context, c, set int, y []float64, own, whole scale, start []float64, res *Result) error {
 	r := &pl.regions[c]
 	shares := make([]float64, len(y))
 	for k := range y {
@@ -151,12 +208,15 @@ func (pl *plan) runRegion(ctx context.Context, c int, y []float64, own, whole sc
 		res.Counts.Paths += paths
 		return nil
 	}
-	var guess []float64
+	var guess plaplace.Guess
 	if start != nil {
-		guess = make([]float64, len(r.vertices))
+		guess.Values = make([]float64, len(r.vertices))
 		for k, v := range r.vertices {
-			guess[k] = own.share(start[v])
+			guess.Values[k] = own.share(start[v])
 		}
+	} else if pl.guesses != nil && pl.guesses[c] != nil {
+		guess = pl.guesses[c][set]
+		pl.guesses[c][set] = plaplace.Guess{}
 	}
 	s, err := pl.engine(ctx, c)
 	if err != nil {
@@ -208,10 +268,7 @@ func (pl *plan) verify(ctx context.Context, values, f []float64) (Certificate, e
 	}
 	for c := range pl.regions {
 		r := &pl.regions[c]
-		y := make([]float64, len(r.given))
-		for k, g := range r.given {
-			y[k] = values[g]
-		}
+		y := r.pick(values)
 		own := scaleOf(y)
 		if own.size == 0 {
 			for _, v := range r.vertices {

@@ -121,7 +121,12 @@ func RunMany(ctx context.Context, p Problem, values, starts [][]float64, s Setti
 				s.Progress("solve", (float64(k)+share)/float64(len(values)))
 			}
 		}
-		r, err := pl.run(ctx, values[k], start)
+		if len(values) > 1 && starts == nil && k%together == 0 {
+			if err := pl.prepare(ctx, values[k:min(k+together, len(values))]); err != nil {
+				return out, err
+			}
+		}
+		r, err := pl.run(ctx, k%together, values[k], start)
 		if err != nil {
 			return out, err
 		}

@@ -95,6 +95,48 @@ func TestManyEqualsOneByOne(t *testing.T) {
 	}
 }
 
+// TestManyOnLargeGraphs: sets of values share their first solve; each must still meet what it gives alone.
+func TestManyOnLargeGraphs(t *testing.T) {
+	for _, p := range []float64{1.5, 2, 8} {
+		pr := knnProblem(12, 2500, 2, 15, false)
+		pr.P = p
+		sets := make([][]float64, 11)
+		for k := range sets {
+			sets[k] = make([]float64, len(pr.Values))
+			for j := range sets[k] {
+				if j%11 == k {
+					sets[k][j] = 1
+				}
+			}
+		}
+		many, err := RunMany(context.Background(), pr, sets, nil, Settings{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		sum := make([]float64, pr.Graph.N)
+		for k := range sets {
+			if !many[k].Status.Proven() {
+				t.Errorf("p=%v: set %d %v %+v", p, k, many[k].Status, many[k].Certificate)
+			}
+			for v := range sum {
+				sum[v] += many[k].Values[v]
+			}
+			if k%4 > 0 {
+				continue
+			}
+			pr.Values = sets[k]
+			if d := testproblems.Distance(solved(t, pr).Values, many[k].Values); d > 2e-9 {
+				t.Errorf("p=%v: set %d is %.3g from the same alone", p, k, d)
+			}
+		}
+		for v := range sum {
+			if p == 2 && math.Abs(sum[v]-1) > 1e-10 {
+				t.Fatalf("one against the rest at p = 2 adds up to %v at vertex %d", sum[v], v)
+			}
+		}
+	}
+}
+
 // TestHardWeights: weights over 10 and over 130 decades, tethers, certified or missed, never silently wrong.
 func TestHardWeights(t *testing.T) {
 	for _, p := range []float64{1.5, 2, 3, 8, 32} {
