@@ -297,10 +297,10 @@ func readStream(text string, o Options) (*Table, error) {
 		if err := WriteAppended(&apart, batch, nil); err != nil {
 			return nil, err
 		}
-		b := *batch.blocks[0]
-		b.row = all.rows
+		b := batch.blocks[0]
+		b = &block{data: b.data, starts: b.starts, row: all.rows, line: b.line, multi: b.multi}
 		all.rows += b.rows()
-		all.blocks = append(all.blocks, &b)
+		all.blocks = append(all.blocks, b)
 	}
 	if err := WriteAppended(&together, all, nil); err != nil {
 		return nil, err
@@ -331,7 +331,7 @@ func TestInputFiles(t *testing.T) {
 	if err != nil || tab.Columns() != 2 {
 		t.Errorf("%v, want 2 columns in a .tsv", err)
 	}
-	if _, err := Read(context.Background(), path, nil, Options{Memory: 1 << 10}); firstFault(err) == nil || firstFault(err).Code != "S15" {
+	if _, err := Read(context.Background(), path, nil, Options{Memory: 8}); firstFault(err) == nil || firstFault(err).Code != "S15" {
 		t.Errorf("%v, want S15 before reading", err)
 	}
 	ctx, cancel := context.WithCancelCause(context.Background())

@@ -7,10 +7,10 @@ import (
 	"sync"
 )
 
-// EstimateRead gives the bytes that Read is expected to hold at its peak for a table of size bytes of plain text: the
-// text, an offset of four bytes a row (rows of 16 bytes or more assumed) and the blocks in flight.
-func EstimateRead(size int64) int64 {
-	return size + size/4 + 8*blockSize
+// EstimateRead gives the bytes that Read is expected to hold for a table of size bytes of plain text with rows of
+// rowBytes bytes on average: the text, an offset of four bytes a row and the blocks in flight.
+func EstimateRead(size int64, rowBytes float64) int64 {
+	return size + int64(4*float64(size)/max(rowBytes, 1)) + min(size, 4*blockSize)
 }
 
 // EstimateNumbers gives the bytes of a rows x cols matrix of float64.

@@ -35,7 +35,7 @@ func (e NumberError) Error() string { return numberErrors[e] }
 // even. The error is a NumberError.
 func ParseNumber(cell []byte, decimal byte) (float64, error) {
 	v, n, err := scanNumber(cell, 0, decimal)
-	if err == 0 && n != len(cell) {
+	if n != len(cell) { // also where the number before the rest is out of range
 		err = NotNumber
 	}
 	if err != 0 {

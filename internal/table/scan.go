@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"fmt"
 	"strings"
+	"sync/atomic"
 
 	"pinfill/internal/fault"
 )
@@ -15,9 +16,24 @@ type block struct {
 	row    int      // number of the first row
 	line   int      // line of data[0], from 1
 	multi  bool     // some cell holds a line end, so that rows and lines do not go in step
+
+	counted atomic.Uint64 // where linesBefore last counted to and what it found, 32 bits each
 }
 
 func (b *block) rows() int { return len(b.starts) - 1 }
+
+// linesBefore counts the line ends in data[:pos]. It goes on from where it was last asked, so that messages about many
+// rows in order do not count all lines each time.
+func (b *block) linesBefore(pos int) int {
+	last := b.counted.Load()
+	from, lines := int(last>>32), int(uint32(last))
+	if from > pos {
+		from, lines = 0, 0
+	}
+	lines += bytes.Count(b.data[from:pos], []byte{'\n'})
+	b.counted.Store(uint64(pos)<<32 | uint64(lines))
+	return lines
+}
 
 // raw is a row without its line end.
 func (b *block) raw(i int) []byte {
@@ -35,7 +51,8 @@ type scanned struct {
 
 // scan finds the rows of a piece and checks their shape. It depends on the piece alone.
 func (h *head) scan(p piece, last bool) *scanned {
-	s := &scanned{block: block{data: p.data}}
+	s := &scanned{}
+	s.data = p.data
 	e, stop := h.notText(p)
 	if e != nil {
 		s.fatal = e

@@ -21,6 +21,8 @@ type Stream struct {
 	stop  context.CancelFunc
 	gone  chan struct{} // closed when the reading goroutine has ended
 
+	rowBytes float64 // average length of the first lines
+
 	rows  int64
 	lines int          // before the next block
 	blank *fault.Error // blank lines that end the last batch: wrong if a row follows
@@ -146,6 +148,7 @@ func (s *Stream) afterHead(p piece, cut *cutter, o *Options) (*piece, *cutter, e
 	}
 	rest, err := readHead(s.head, p, o)
 	s.lines = bytes.Count(s.head.raw, []byte{'\n'})
+	s.rowBytes = float64(len(rest.data)) / float64(max(1, bytes.Count(rest.data, []byte{'\n'})))
 	return &rest, cut, err
 }
 

@@ -53,7 +53,7 @@ func Read(ctx context.Context, name string, stdin io.Reader, o Options) (*Table,
 	defer s.Close()
 	h := s.head
 	if s.src.size >= 0 {
-		if need := EstimateRead(s.src.size); need > h.memory {
+		if need := EstimateRead(s.src.size, s.rowBytes); need > h.memory {
 			return nil, overMemory(h, "S15", fmt.Sprintf("reading %d bytes needs about %d bytes of memory", s.src.size, need))
 		}
 	}
@@ -209,8 +209,7 @@ func (t *Table) At(row, col int) (line, column int) {
 	if !b.multi {
 		return b.line + i, cell + 1
 	}
-	line, column = place(b.data, start+cell)
-	return line + b.line - 1, column
+	return b.line + b.linesBefore(start+cell), start + cell - bytes.LastIndexByte(b.data[:start+cell], '\n')
 }
 
 // Fault is a refusal of a cell, with exit code 3: the caller gives the code, what is wrong and what mends it.
