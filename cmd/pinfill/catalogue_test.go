@@ -47,9 +47,10 @@ var commands = map[string]func(ts script, neg bool, args []string){
 	"fifo":         fifo,
 }
 
-func must(ts script, err error) {
+// must stops a test or a script at an error.
+func must(t interface{ Fatalf(string, ...any) }, err error) {
 	if err != nil {
-		ts.Fatalf("%v", err)
+		t.Fatalf("%v", err)
 	}
 }
 
