@@ -8,24 +8,39 @@ type step struct {
 	value float64
 }
 
-// trace gives the path behind the bounds of v, from the held vertex above to the one below, with the value of each
-// free vertex on it: linear in the distance from the nearer named end.
-func (w *worker) trace(v int32) []step {
-	slope := w.slope[v]
-	high, low := -w.lower[v].value, w.upper[v].value
+// trace gives the path behind the bounds of v, from the held vertex above to the one below, and the other vertices of q
+// whose paths are as steep, with the value of each on its path: linear in the distance from a named end. Where the
+// slope is the steepest of all, each such vertex has this value whichever path through it is taken, since its bounds
+// at that level meet there; setting them together keeps lattices of equal weights, all ties, from being settled one
+// path at a time.
+func (w *worker) trace(v int32, q []int32) []step {
 	path := w.path[:0]
 	for u := v; w.set[u] != held; u = w.lower[u].parent {
-		path = append(path, step{u, max(high-float64(slope*w.lower[u].dist), low)})
+		path = append(path, step{u, w.along(v, w.lower[u].dist, true)})
 	}
 	for u := w.upper[v].parent; w.set[u] != held; u = w.upper[u].parent {
-		path = append(path, step{u, min(low+float64(slope*w.upper[u].dist), high)})
+		path = append(path, step{u, w.along(v, w.upper[u].dist, false)})
+	}
+	for _, u := range q {
+		if w.slope[u] >= w.slope[v]*(1-slack) {
+			fromHigh := w.lower[u].dist < w.upper[u].dist
+			path = append(path, step{u, w.along(u, min(w.lower[u].dist, w.upper[u].dist), fromHigh)})
+		}
 	}
 	w.path = path
 	return path
 }
 
-// fix holds the vertices of a path at their values. A vertex that stands on both halves (possible only where
-// lengths are lost in rounding) keeps the first value.
+// along gives the value at a distance from the upper or the lower end of the path behind the bounds of v.
+func (w *worker) along(v int32, dist float64, fromHigh bool) float64 {
+	high, low := -w.lower[v].value, w.upper[v].value
+	if fromHigh {
+		return max(high-float64(w.slope[v]*dist), low)
+	}
+	return min(low+float64(w.slope[v]*dist), high)
+}
+
+// fix holds the vertices of a path at their values. A vertex that stands there twice keeps the first value.
 func (w *worker) fix(path []step) {
 	count := 0
 	for _, s := range path {

@@ -102,7 +102,7 @@ func (w *worker) dig(q []int32, id int32, alpha float64) {
 		}
 		best, beta := w.pivot(q)
 		mark := len(w.stack)
-		path := w.trace(best)
+		path := w.trace(best, q)
 		above := w.steeper(q, id, beta)
 		if len(above) == 0 {
 			// Nothing is steeper than the path through best.
