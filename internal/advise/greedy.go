@@ -8,17 +8,17 @@ import (
 
 // greedy is the state of Next: everything is given the labels and the picks so far.
 type greedy struct {
-	p       *NextProblem
-	system  solver
-	weight  []float64           // r, rows times doubt; 0 at held vertices
-	total   []float64           // G r
-	diag    []float64           // G_kk, exact where exact says so
-	exact   []bool              //
-	out     []bool              // held, excluded or named already
-	column  map[int32][]float64 // exact columns G_k of vertices not named yet, by vertex
-	named   []named
-	left    float64 // r' G r
-	median  float64 // median of G_kk at the start, over free vertices
+	p      *NextProblem
+	system solver
+	weight []float64           // r, rows times doubt; 0 at held vertices
+	total  []float64           // G r
+	diag   []float64           // G_kk, exact where exact says so
+	exact  []bool              //
+	out    []bool              // held, excluded or named already
+	column map[int32][]float64 // exact columns G_k of vertices not named yet, by vertex
+	named  []named
+	left   float64 // r' G r
+	median float64 // median of G_kk at the start, over free vertices
 }
 
 // named is a pick with its column at the time it was named.
