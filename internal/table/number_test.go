@@ -62,6 +62,19 @@ func TestNumberTexts(t *testing.T) {
 	}
 }
 
+// TestEveryByte puts each byte in each place among digits.
+func TestEveryByte(t *testing.T) {
+	for c := range 256 {
+		for at := range 18 {
+			text := []byte("123456789012345678")
+			text[at] = byte(c)
+			checkNumber(t, string(text))
+			text[(at+3)%18] = '.'
+			checkNumber(t, string(text))
+		}
+	}
+}
+
 // TestNumberRandom compares with strconv on the kinds of number a table holds, and on all bit patterns.
 func TestNumberRandom(t *testing.T) {
 	n := 100_000

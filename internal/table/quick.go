@@ -17,7 +17,7 @@ func leadingDigits(w uint64) (n int, value uint64) {
 	// Digits become 0 to 9; any other byte has a bit in its upper half, or gets one when 6 is added. A carry out of a
 	// byte that is no digit runs into bytes after it, which do not matter.
 	d := w ^ asciiZeros
-	other := (d | d + 0x0606060606060606) & 0xf0f0f0f0f0f0f0f0
+	other := (d | (d + 0x0606060606060606)) & 0xf0f0f0f0f0f0f0f0 // | and + bind alike in Go
 	n = bits.TrailingZeros64(other) >> 3
 	d <<= 64 - 8*n // the last digit into the highest byte, zeros before the first
 	// Pairs, fours, all eight: sums of neighbours with weights 10, 100 and 10000 (Lemire 2021, section 3).

@@ -123,7 +123,7 @@ func (s *Stream) begin(o *Options) (*piece, *cutter, error) {
 		if err != nil {
 			return nil, nil, err
 		}
-		if len(bytes.Trim(p.data, "\r\n")) == 0 {
+		if isBlank(p.data) {
 			blank++
 			continue
 		}
@@ -133,6 +133,18 @@ func (s *Stream) begin(o *Options) (*piece, *cutter, error) {
 		}
 		return s.afterHead(p, cut, o)
 	}
+}
+
+// isBlank tells whether text is nothing but line ends, LF or CRLF.
+func isBlank(text []byte) bool {
+	for len(text) > 0 {
+		end := bytes.IndexByte(text, '\n') + 1
+		if end == 0 || len(trimEnd(text[:end])) > 0 {
+			return false
+		}
+		text = text[end:]
+	}
+	return true
 }
 
 // afterHead reads the header off p and sees to it that a row follows in the piece it gives.
