@@ -52,8 +52,13 @@ func (s *Solver) enclose(ctx context.Context, x point, w *work, allowed float64)
 			w.b[v] += spread
 		}
 	}
+	// What psi misses of its equation is within the share that spread adds, or is found below and repaired.
+	tolerance := 1e-3
+	if s.p == 2 {
+		tolerance = 1e-2
+	}
 	psi := w.x
-	if err := s.engine.solve(ctx, w.lc, w.rowMax, w.b, psi, 1e-3); err != nil {
+	if err := s.engine.solve(ctx, w.lc, w.rowMax, w.b, psi, tolerance); err != nil {
 		return enclosure{}, false, err
 	}
 	var top float64

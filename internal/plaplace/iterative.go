@@ -52,12 +52,20 @@ func (it *iterative) solve(ctx context.Context, lc, rowMax, b, x []float64, tole
 		}
 		return m
 	})
-	val := make([]float64, g.NNZ())
+	// At p = 2 the conductances are always the same.
+	reweigh := it.system == nil || s.p != 2
+	var val []float64
+	if reweigh {
+		val = make([]float64, g.NNZ())
+	}
 	parallel.For(s.workers, s.n, rowChunk, func(lo, hi int) {
 		for v := lo; v < hi; v++ {
 			it.rhs[0][v] = 0
 			if !s.isFixed[v] {
 				it.rhs[0][v] = b[v] * lifted(rowMax[v], rowMax[v], rowMax[v], top)
+			}
+			if !reweigh {
+				continue
 			}
 			for k := g.RowPtr[v]; k < g.RowPtr[v+1]; k++ {
 				if e := s.slot[k]; e >= 0 {
@@ -69,7 +77,7 @@ func (it *iterative) solve(ctx context.Context, lc, rowMax, b, x []float64, tole
 	var err error
 	if it.system == nil {
 		it.system, err = laplace.New(ctx, g.WithValues(val), s.fixed, laplace.Options{Workers: s.options.Workers, Method: it.method()})
-	} else {
+	} else if reweigh {
 		err = it.system.Reweight(ctx, val)
 	}
 	if err != nil {
@@ -183,20 +191,13 @@ func (s *Solver) Quadratics(ctx context.Context, values [][]float64) ([]Guess, e
 	if !large {
 		return nil, nil
 	}
-	val := make([]float64, s.graph.NNZ())
-	parallel.For(s.workers, len(val), edgeChunk, func(lo, hi int) {
-		for k := lo; k < hi; k++ {
-			val[k] = math.Exp(max(2*s.graph.Val[k], -room-band))
+	if it.system == nil || s.p != 2 {
+		// One solve sets up the system with the conductances of p = 2, squeezed as they must be.
+		w := s.newWork()
+		s.linearise(w, 2, 0, rowPad)
+		if err := it.solve(ctx, w.lc, w.rowMax, w.b, w.x, 1); err != nil {
+			return nil, err
 		}
-	})
-	var err error
-	if it.system == nil {
-		it.system, err = laplace.New(ctx, s.graph.WithValues(val), s.fixed, laplace.Options{Workers: s.options.Workers, Method: it.method()})
-	} else {
-		err = it.system.Reweight(ctx, val)
-	}
-	if err != nil {
-		return nil, err
 	}
 	guesses := make([]Guess, len(values))
 	out := make([][]float64, len(values))
@@ -204,6 +205,6 @@ func (s *Solver) Quadratics(ctx context.Context, values [][]float64) ([]Guess, e
 		out[k] = make([]float64, s.n)
 		guesses[k] = Guess{Values: out[k], Quadratic: true}
 	}
-	_, err = it.system.SolveDirichlet(ctx, values, out, s.firstTolerance())
+	_, err := it.system.SolveDirichlet(ctx, values, out, s.firstTolerance())
 	return guesses, err
 }

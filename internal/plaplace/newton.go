@@ -106,6 +106,9 @@ func (s *Solver) linearise(w *work, p, eps, pad float64) (imbalance float64) {
 // sum w^p (D^2+eps^2)^((p-2)/2) D dx at D = d + t dx, rises through 0 there. Newton's own step is t = 1, taken as it
 // is where the derivative has fallen to a tenth.
 func (s *Solver) step(w *work, p, eps float64) float64 {
+	if p == 2 {
+		return 1
+	}
 	eps2 := eps * eps
 	top := parallel.Max(s.workers, len(s.ea), edgeChunk, func(lo, hi int) float64 {
 		m := math.Inf(-1)
@@ -186,7 +189,7 @@ func (s *Solver) iterate(ctx context.Context, x point, w *work, p, eps, pad, sto
 			return last, err
 		}
 		s.counts.Newton++
-		parallel.For(s.workers, len(s.ea), edgeChunk, func(lo, hi int) {
+		parallel.For(s.workers, len(s.ea), edgeChunk, func(lo, hi int) { // for the line search
 			for e := lo; e < hi; e++ {
 				w.dx[e] = w.x[s.eu[e]] - w.x[s.ev[e]]
 			}

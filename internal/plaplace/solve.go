@@ -142,9 +142,10 @@ func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance flo
 
 // polish takes up to limit Newton steps that go to x.h, until one is so short that the next would be below rounding.
 func (s *Solver) polish(ctx context.Context, x point, w *work, limit int) error {
-	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, polished, 1e-5, limit, true)
+	stop, tolerance := 1e-8, 1e-5
+	if s.p == 2 {
+		stop, tolerance = 1e-6, 1e-3 // linear: the product is what is left
+	}
+	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, stop, tolerance, limit, true)
 	return err
 }
-
-// polished is a step after which Newton's method, with systems solved to 1e-5, leaves an error far below tolerance.
-const polished = 1e-8
