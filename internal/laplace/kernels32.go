@@ -10,6 +10,7 @@ func (l *level) apply(width int, x, y []float32, lo, hi int) {
 	if lo >= hi {
 		return
 	}
+	_, _, _ = l.tie[hi-1], x[l.n*width-1], y[hi*width-1] // the last bounds checks
 	quads := unsafe.SliceData(l.quads[l.start[lo]:])
 	if width == 1 {
 		rows1(quads, &l.start[lo], &l.tie[lo], unsafe.SliceData(x), &x[lo], &y[lo], hi-lo)

@@ -9,6 +9,7 @@ func (a *sddm) apply(width int, x, y []float64, lo, hi int) {
 	if lo >= hi {
 		return
 	}
+	_, _, _ = a.excess[hi-1], x[a.n*width-1], y[hi*width-1] // the last bounds checks
 	col, w := unsafe.SliceData(a.col[a.ptr[lo]:]), unsafe.SliceData(a.w[a.ptr[lo]:])
 	if width == 1 {
 		csr1(col, w, &a.ptr[lo], &a.excess[lo], unsafe.SliceData(x), &x[lo], &y[lo], hi-lo)
