@@ -16,7 +16,7 @@ import (
 )
 
 // sheet is n points on a square, their graphs as a Source, and a value at each.
-func sheet(t *testing.T, r *rand.Rand, n int, value func(x, y float64) float64) (Source, []float64) {
+func sheet(t testing.TB, r *rand.Rand, n int, value func(x, y float64) float64) (Source, []float64) {
 	t.Helper()
 	raw := points.NewMatrix(n, 2)
 	for i := range raw.Data {

@@ -17,7 +17,7 @@ type responses struct {
 	labels []int         // labels in the component, as positions in Labels
 	fixed  []int32       // their vertices in the part
 	schur  *mat.SymDense // nil if there is one label
-	h      [][]float64   // h[i][v]: harmonic measure of labels[i] at vertex v of the part
+	h      [][]float64   // h[i][v]: harmonic measure of labels[i] at vertex v of the part; nil unless fields are asked for
 	mass   []float64     // mass[i]: sum of h[i] over the free vertices
 }
 
@@ -43,12 +43,17 @@ func respond(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions, cou
 		if len(r.fixed) == 0 {
 			continue
 		}
-		r.h = make([][]float64, len(r.fixed))
+		keep := o.Field != nil
+		if keep {
+			r.h = make([][]float64, len(r.fixed))
+		}
 		r.mass = make([]float64, len(r.fixed))
 		if len(r.fixed) == 1 { // the constant is the only answer
-			r.h[0] = make([]float64, part.Graph.N)
-			for v := range r.h[0] {
-				r.h[0][v] = 1
+			if keep {
+				r.h[0] = make([]float64, part.Graph.N)
+				for v := range r.h[0] {
+					r.h[0][v] = 1
+				}
 			}
 			r.mass[0] = float64(part.Graph.N - 1)
 			all = append(all, r)
@@ -61,7 +66,9 @@ func respond(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions, cou
 		free := s.Free()
 		schur, stats, err := s.Harmonic(ctx, tol, func(first int, h [][]float64) error {
 			for k := range h {
-				r.h[first+k] = append([]float64(nil), h[k]...)
+				if keep {
+					r.h[first+k] = append([]float64(nil), h[k]...)
+				}
 				var m float64
 				for _, v := range free {
 					m += h[k][v]
@@ -79,18 +86,6 @@ func respond(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions, cou
 		all = append(all, r)
 	}
 	return all, nil
-}
-
-// solution gives the answer to the targets of one class over all vertices, NaN out of reach.
-func solution(n int, rs []responses, target []float64) []float64 {
-	f := make([]float64, n)
-	for v := range f {
-		f[v] = math.NaN()
-	}
-	for _, r := range rs {
-		r.spread(target, nil, f)
-	}
-	return f
 }
 
 // spread writes the answer of one component to the targets less the errors e (by position in r.labels; nil means none).

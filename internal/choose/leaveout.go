@@ -58,10 +58,20 @@ func LeaveOut(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions) (*
 	for f := range out.Mass {
 		out.Mass[f] = make([]float64, len(l.Target))
 	}
-	if p.P == 2 {
+	if p.P == 2 && exactly(p.Graph.N, l, o, out.Folds) {
 		return out, leaveExact(ctx, p, l, o, out)
 	}
+	out.Exact = false
 	return out, leaveAgain(ctx, p, l, o, out)
+}
+
+// exactly says whether the closed form is worth it at p = 2: it takes one solve a label where solving again takes one
+// a fold and class, each fold with a set-up of its own, and it holds one field a label where fields are asked for.
+func exactly(n int, l Labels, o LeaveOptions, folds int) bool {
+	if o.Field != nil && n*l.Count() > 1<<26 {
+		return false
+	}
+	return n <= 5000 || l.Count() <= 4*folds*len(l.Target)
 }
 
 // members lists the labels of each fold.
