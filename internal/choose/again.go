@@ -13,7 +13,7 @@ import (
 func leaveAgain(ctx context.Context, p solve.Problem, l Labels, o LeaveOptions, out *LeftOut) error {
 	for f, ks := range members(out.Fold, out.Folds) {
 		rest := l.without(ks)
-		fields, results, err := Solve(ctx, p, rest, o.Start, solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers})
+		fields, results, err := Solve(ctx, p, rest, o.Start, solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers, Rough: o.Rough})
 		if err != nil {
 			return err
 		}

@@ -14,6 +14,9 @@ type LeaveOptions struct {
 	Fold      []int32 // fold of each label, from FoldsOf; nil means one fold a label, or one a group
 	Tolerance float64 // of the solves, a share of the label range; 0 means 1e-9
 	Workers   int     // 0 means GOMAXPROCS; answers do not depend on it
+	// Rough leaves labels out to about 1e-4 of the range where that takes solves, without certificates: far below the
+	// noise of a few dozen labels.
+	Rough bool
 	// Start is the answer with all labels, one slice a class by vertex, from which the solves at p != 2 start; nil
 	// means that it is not known.
 	Start [][]float64

@@ -69,7 +69,7 @@ func (t *trial) score(ctx context.Context, s Setting, start [][]float64) (*Score
 		sc.Shares = decidedShares(fields, sc.Weights, t.labels)
 	}
 	if t.fold != nil {
-		o := LeaveOptions{Fold: t.fold, Tolerance: t.solve.Tolerance, Workers: t.solve.Workers, Start: fields}
+		o := LeaveOptions{Fold: t.fold, Tolerance: t.solve.Tolerance, Workers: t.solve.Workers, Start: fields, Rough: true}
 		if sc.left, err = LeaveOut(ctx, p, t.labels, o); err != nil {
 			return nil, err
 		}

@@ -209,11 +209,13 @@ func (r *run) spreads(ctx context.Context, l *labelled, fold []int32) (field, le
 		moments.Target[0][k], moments.Target[1][k] = v-mean, (v-mean)*(v-mean)
 	}
 	problem := r.problem(l.field, 2)
-	fields, _, err := choose.Solve(ctx, problem, moments, nil, r.solveSettings())
+	rough := r.solveSettings()
+	rough.Rough = true // a scale for intervals, not an answer
+	fields, _, err := choose.Solve(ctx, problem, moments, nil, rough)
 	if err != nil {
 		return nil, nil, err
 	}
-	out, err := choose.LeaveOut(ctx, problem, moments, choose.LeaveOptions{Fold: fold, Tolerance: r.Tolerance, Workers: r.Workers, Start: fields})
+	out, err := choose.LeaveOut(ctx, problem, moments, choose.LeaveOptions{Fold: fold, Workers: r.Workers, Start: fields, Rough: true})
 	if err != nil {
 		return nil, nil, err
 	}

@@ -25,6 +25,8 @@ import (
 type Options struct {
 	Workers  int                 // 0 means GOMAXPROCS; answers do not depend on it
 	Progress func(share float64) // called now and then with the share of the work done; may be nil
+	// Rough stops within about 1e-4 of the range of the minimiser, without a certificate.
+	Rough bool
 }
 
 // Counts say how much work a solve took.

@@ -2,6 +2,7 @@ package plaplace
 
 import (
 	"context"
+	"math"
 )
 
 const (
@@ -35,6 +36,13 @@ func (s *Solver) Solve(ctx context.Context, values []float64, guess Guess, toler
 	x := point{f: f}
 	if err := s.descend(ctx, x, w, guess); err != nil {
 		return Result{Values: f, Counts: s.counts}, err
+	}
+	if s.options.Rough {
+		for v := range f {
+			f[v] = min(max(f[v], 0), 1)
+		}
+		nan := math.NaN()
+		return Result{Values: f, Counts: s.counts, Certificate: Certificate{Gap: nan, Imbalance: nan, Width: nan}}, nil
 	}
 	return s.finish(ctx, f, w, tolerance)
 }
@@ -71,7 +79,10 @@ func (s *Solver) descend(ctx context.Context, x point, w *work, guess Guess) err
 
 // firstTolerance is that of the linear system for p = 2: the answer itself, or a first guess.
 func (s *Solver) firstTolerance() float64 {
-	if s.p == 2 {
+	switch {
+	case s.p == 2 && s.options.Rough:
+		return 1e-5
+	case s.p == 2:
 		return 1e-8
 	}
 	return 1e-3

@@ -150,7 +150,11 @@ func (pl *plan) run(ctx context.Context, set int, values, start []float64) (Resu
 	} else {
 		res.Certificate.SlopeImbalance = math.NaN()
 	}
-	if res.Status != Trivial {
+	switch {
+	case res.Status == Trivial:
+	case pl.settings.Rough && !math.IsInf(pl.problem.P, 1):
+		res.Status = Rough
+	default:
 		res.Status = res.Certificate.status(pl.settings.tolerance())
 	}
 	return res, nil
@@ -178,7 +182,7 @@ const (
 func (pl *plan) engine(ctx context.Context, c int) (*plaplace.Solver, error) {
 	if pl.engines[c] == nil {
 		r := &pl.regions[c]
-		s, err := plaplace.New(ctx, r.graph, r.fixed, pl.problem.P, plaplace.Options{Workers: pl.settings.Workers})
+		s, err := plaplace.New(ctx, r.graph, r.fixed, pl.problem.P, plaplace.Options{Workers: pl.settings.Workers, Rough: pl.settings.Rough})
 		if err != nil {
 			return nil, err
 		}

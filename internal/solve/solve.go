@@ -40,6 +40,10 @@ type Settings struct {
 	Workers   int                               // 0 means GOMAXPROCS; the answer does not depend on it
 	Start     []float64                         // a guess at the answer, one value a vertex, or nil
 	Progress  func(stage string, share float64) // called now and then, share in [0, 1]; may be nil
+
+	// Rough stops within about 1e-4 of the label range, without a certificate: Status Rough. For evidence that is
+	// compared with the labels' own noise, such as left-out answers, never for an answer.
+	Rough bool
 }
 
 // DefaultTolerance is the tolerance that Settings.Tolerance = 0 stands for.

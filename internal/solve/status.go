@@ -14,6 +14,8 @@ const (
 	Trivial
 	// Stopped means that the solve was ended from outside before it had values.
 	Stopped
+	// Rough means that the values are near the minimiser, as asked, and that nothing was certified.
+	Rough
 )
 
 // statuses has the name and the sentence of each Status, in order.
@@ -22,6 +24,7 @@ var statuses = [...]struct{ name, sentence string }{
 	Missed:    {"missed", "the values are the best found, but their certificate misses the tolerance"},
 	Trivial:   {"trivial", "nothing had to be solved: no free vertex, or all given values equal"},
 	Stopped:   {"stopped", "the solve was ended by a limit or a signal before it had values"},
+	Rough:     {"rough", "the values are near the minimiser, as asked; nothing was certified"},
 }
 
 // String is the name of the status, one lower-case word.
