@@ -153,34 +153,46 @@ func (c *Checked) lookAt(r *run, l *labelled, w *sparse.CSR) error {
 }
 
 func (c *Checked) lookAtDimension(r *run, l *labelled) error {
+	var err error
+	c.Dimension, c.Windows, err = r.dimensionFigures(l, windowPs, true)
+	return err
+}
+
+// dimensionFigures estimates the dimension and judges the chosen number of neighbours at each p; nil where there are
+// too few rows to say. The bandwidths' windows cost a spanning forest each.
+func (r *run) dimensionFigures(l *labelled, ps []float64, bandwidths bool) (*DimensionFigures, []WindowFigures, error) {
 	n := l.network
 	dim, err := dimension.Estimate(n.lists, dimension.Options{Columns: n.space.Points.D, Workers: r.Workers})
 	if err != nil {
-		return nil // too few rows to say
+		return nil, nil, nil // too few rows to say
 	}
-	c.Dimension = &DimensionFigures{
+	d := &DimensionFigures{
 		Value: Number(dim.Value), Low: Number(dim.Low), High: Number(dim.High), TwoNN: Number(dim.TwoNN.Value), Rounded: dim.Rounded, BiasedLow: dim.BiasedLow,
 	}
 	for _, f := range dim.Likelihood {
-		c.Dimension.Likelihood = append(c.Dimension.Likelihood, FigureAtK{f.K, Number(f.Value), Number(f.StdError)})
+		d.Likelihood = append(d.Likelihood, FigureAtK{f.K, Number(f.Value), Number(f.StdError)})
 	}
 	g, err := n.graph(l.setting.Neighbors, r.Workers)
 	if err != nil {
-		return err
+		return nil, nil, err
 	}
-	for _, p := range windowPs {
+	var windows []WindowFigures
+	for _, p := range ps {
 		v := dimension.Judge(n.n, dim, float64(l.setting.Neighbors), p)
-		b := g.BandwidthWindow(dim.Value, p, false, 1, r.Workers)
 		w := WindowFigures{
 			P: Number(p), NeighborsLow: Number(v.Low), NeighborsHigh: Number(v.High), Inside: v.Inside,
-			BandwidthLow: Number(b.Connect * n.space.Unit), BandwidthHigh: Number(b.High * n.space.Unit),
+			BandwidthLow: Number(math.NaN()), BandwidthHigh: Number(math.NaN()),
+		}
+		if bandwidths {
+			b := g.BandwidthWindow(dim.Value, p, false, 1, r.Workers)
+			w.BandwidthLow, w.BandwidthHigh = Number(b.Connect*n.space.Unit), Number(b.High*n.space.Unit)
 		}
 		for _, reason := range v.Reasons {
 			w.Reasons = append(w.Reasons, reason.String())
 		}
-		c.Windows = append(c.Windows, w)
+		windows = append(windows, w)
 	}
-	return nil
+	return d, windows, nil
 }
 
 func sortShares(s []ColumnShare) {

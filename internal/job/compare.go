@@ -79,7 +79,7 @@ func Compare(ctx context.Context, c *CompareOptions) error {
 	if err := r.compareRecord(l, sweep, c); err != nil {
 		return err
 	}
-	if err := r.writeCompareReport(w, l, sweep); err != nil {
+	if err := r.writeCompareReport(ctx, w, l, sweep); err != nil {
 		return err
 	}
 	if c.Terminal && c.Parts == 0 {

@@ -38,7 +38,7 @@ func Label(ctx context.Context, o *Options) error {
 	if err != nil {
 		return err
 	}
-	err = r.stage(ctx, "write", func() error { return r.writeLabel(w, l) })
+	err = r.stage(ctx, "write", func() error { return r.writeLabel(ctx, w, l) })
 	if err != nil {
 		return err
 	}

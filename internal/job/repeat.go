@@ -51,5 +51,5 @@ func Repeat(ctx context.Context, o *Options, rec *Record, path string) error {
 		return &fault.Error{Exit: fault.Uncertified, File: path, Message: fmt.Sprintf("the repeated table has other bytes (%s..., recorded %s...); %s", sum[:12], want[:12], what)}
 	}
 	r.note("the repeated run agrees with %s byte for byte: %s", path, sum)
-	return r.writeLabel(w, l)
+	return r.writeLabel(ctx, w, l)
 }

@@ -1,6 +1,7 @@
 package job
 
 import (
+	"context"
 	"fmt"
 	"slices"
 	"strings"
@@ -109,7 +110,7 @@ func (r *run) finish(w *outputs, rec *Record) error {
 }
 
 // writeLabel writes the completed table and what goes with it.
-func (r *run) writeLabel(w *outputs, l *labelled) error {
+func (r *run) writeLabel(ctx context.Context, w *outputs, l *labelled) error {
 	if o := w.byRole["table"]; o != nil {
 		if err := r.checkNames(l); err != nil {
 			return err
@@ -119,6 +120,9 @@ func (r *run) writeLabel(w *outputs, l *labelled) error {
 		}
 	}
 	if err := r.writeModel(w, l); err != nil {
+		return err
+	}
+	if err := r.writeReport(ctx, w, l); err != nil {
 		return err
 	}
 	return r.finish(w, l.record)
