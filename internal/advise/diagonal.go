@@ -28,6 +28,9 @@ const (
 func (g *greedy) diagonal(ctx context.Context) ([]float64, error) {
 	if len(g.system.Free()) <= denseFree {
 		if d := g.denseDiagonal(); d != nil {
+			for v := range g.exact {
+				g.exact[v] = true
+			}
 			return d, nil
 		}
 	}

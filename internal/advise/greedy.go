@@ -62,7 +62,11 @@ func (g *greedy) score(v int) float64 {
 	if g.out[v] || !(g.diag[v] > 0) {
 		return -1
 	}
-	return g.total[v] * g.total[v] / g.diag[v] / g.p.cost(v)
+	s := g.total[v] * g.total[v] / g.diag[v] / g.p.cost(v)
+	if !g.exact[v] {
+		s /= doubtfulDiagonal
+	}
+	return s
 }
 
 // leaders gives the vertices of largest score, best first, equals by number.
@@ -89,31 +93,27 @@ func (g *greedy) leaders(most int) []int32 {
 
 // next names one vertex, or nil if none is left.
 func (g *greedy) next(ctx context.Context) (*Pick, error) {
-	var chosen int32
 	for try := 0; ; try++ {
-		lead := g.leaders(4 * columnBlock)
+		lead := g.leaders(2 * columnBlock)
 		if len(lead) == 0 {
 			return nil, nil
 		}
-		chosen = lead[0]
-		if g.column[chosen] != nil {
-			break
-		}
-		if try == columnTries {
+		chosen := lead[0]
+		if !g.exact[chosen] && try == columnTries {
 			// The estimates never agreed with the exact values: take the best exact one.
 			for _, v := range lead {
-				if g.column[v] != nil {
+				if g.exact[v] {
 					chosen = v
 					break
 				}
 			}
-			if g.column[chosen] != nil {
-				break
-			}
 		}
-		var ask []int32
+		if g.column[chosen] != nil {
+			return g.name(chosen), nil
+		}
+		ask := []int32{chosen}
 		for _, v := range lead {
-			if g.column[v] == nil && len(ask) < columnBlock {
+			if !g.exact[chosen] && !g.exact[v] && v != chosen && len(ask) < columnBlock {
 				ask = append(ask, v)
 			}
 		}
@@ -121,7 +121,6 @@ func (g *greedy) next(ctx context.Context) (*Pick, error) {
 			return nil, err
 		}
 	}
-	return g.name(chosen), nil
 }
 
 // solve finds exact columns of G given labels and picks.
@@ -181,9 +180,7 @@ func (g *greedy) name(v int32) *Pick {
 	share := g.total[v] / own
 	for x, t := range m.column {
 		g.total[x] -= float64(share * t)
-		if !g.exact[x] {
-			g.diag[x] = max(g.diag[x]-float64(t*t)/own, 1e-3*g.diag[x])
-		}
+		g.diag[x] = max(g.diag[x]-float64(t*t)/own, 1e-3*g.diag[x])
 	}
 	g.left -= removed
 	g.out[v], g.total[v], g.weight[v] = true, 0, 0
@@ -212,8 +209,7 @@ func (g *greedy) forget() {
 				worst, at = s, k
 			}
 		}
-		delete(g.column, at)
-		g.exact[at] = false
+		delete(g.column, at) // its diagonal stays exact
 	}
 }
 

@@ -62,12 +62,14 @@ func (p Pick) Sentence() string {
 }
 
 const (
-	doubtFloor  = 0.1  // weight of a row without doubt: a confident error is found only by looking
-	boundaryMin = 0.5  // doubt from which a pick is called a boundary
-	remoteRatio = 2.0  // variance over the median variance from which a pick is called remote
-	columnBlock = 4    // columns solved for at a time
-	columnTries = 3    // blocks solved for one pick at most
-	solveTol    = 1e-6 // of columns: far below what the ranking can notice
+	doubtFloor  = 0.1 // weight of a row without doubt: a confident error is found only by looking
+	boundaryMin = 0.5 // doubt from which a pick is called a boundary
+	remoteRatio = 2.0 // variance over the median variance from which a pick is called remote
+	columnBlock = 4   // columns solved for at a time
+	columnTries = 3   // blocks solved for one pick at most
+	// doubtfulDiagonal is what an estimated G_kk is multiplied by: those that lead have mostly been estimated too low.
+	doubtfulDiagonal = 1.25
+	solveTol         = 1e-6 // of columns: far below what the ranking can notice
 )
 
 // Next names Count vertices, best first; fewer where there are not so many. Components that hold no label come first,
@@ -119,9 +121,12 @@ func (p *NextProblem) validate() error {
 		return errors.New("there is no graph")
 	}
 	n := p.Conductance.N
-	for name, size := range map[string]int{"rows": len(p.Rows), "doubt": len(p.Doubt), "cost": len(p.Cost), "exclude": len(p.Exclude)} {
-		if size != 0 && size != n {
-			return fmt.Errorf("%s has %d entries for %d vertices", name, size, n)
+	for _, c := range []struct {
+		name string
+		size int
+	}{{"rows", len(p.Rows)}, {"doubt", len(p.Doubt)}, {"cost", len(p.Cost)}, {"exclude", len(p.Exclude)}} {
+		if c.size != 0 && c.size != n {
+			return fmt.Errorf("%s has %d entries for %d vertices", c.name, c.size, n)
 		}
 	}
 	for v := range n {
