@@ -6,6 +6,7 @@ import (
 	"math"
 
 	"pinfill/internal/solve"
+	"pinfill/internal/sparse"
 )
 
 // Options steer Auto and Sweep. The zero value means the defaults.
@@ -47,6 +48,14 @@ const (
 	largeWork = 20_000_000
 )
 
+// Folds is the number of folds that labels are left out in: fewer on large graphs, where each costs a solve of its own.
+func Folds(g *sparse.CSR, classes int) int {
+	if g.NNZ()*classes > largeWork/4 {
+		return 3
+	}
+	return foldCount
+}
+
 // Auto chooses the setting. The first setting of Asked, or the study's default, stands unless leave-out shows another
 // to be better by more than the noise of the paired difference; where labels are too few to say, or a
 // setting cannot be certified, the next one that can stands instead. The cost is that of a few solves: one for each
@@ -69,6 +78,7 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 	}
 	t := trial{energy: o.Energy, labels: l, fold: fold, solve: solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers}, measure: true}
 	var first error
+	single := false // the table is too large for more than one setting
 	for i := 0; i < len(all); i++ {
 		s := all[i]
 		if t.fold == nil && !o.Scores && len(d.Scores) > 0 && d.Scores[0].Certified {
@@ -83,13 +93,20 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 		if err := l.Validate(t.graph.N); err != nil {
 			return nil, err
 		}
-		if i == 0 && !fixed && !o.Scores && t.graph.NNZ()*len(l.Target) > largeWork {
-			t.fold, why = nil, "the table is too large to try several settings by default"
+		if i == 0 && !fixed && t.graph.NNZ()*len(l.Target) > largeWork {
+			why = "the table is too large to try several settings by default"
 			if len(a.P) == 0 && l.Task == Classes {
 				all = withP(all, 2)
 				s = all[0]
 				why += ", and p=2 solves fastest"
 			}
+			all, single = all[:1], true
+			if !o.Scores {
+				t.fold = nil
+			}
+		}
+		if t.fold != nil {
+			t.fold = FoldsOf(l, Folds(t.graph, len(l.Target)), o.Seed)
 		}
 		sc, err := t.score(ctx, s, nil)
 		if err != nil {
@@ -110,7 +127,7 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 	if len(d.Scores) == 0 {
 		return nil, first
 	}
-	d.settle(l, all, t.fold != nil, fixed, why)
+	d.settle(l, all, t.fold != nil && !single, fixed, why)
 	return d, nil
 }
 

@@ -101,7 +101,7 @@ func (r *run) chooseSetting(ctx context.Context, l *labelled) error {
 		return err
 	}
 	d, err := choose.Auto(ctx, source, labels, r.asked(l.data, l.network), choose.Options{
-		Energy: r.Energy, Tolerance: r.Tolerance, Workers: r.Workers, Seed: r.Seed, Progress: r.progressFor("solve"), Scores: true,
+		Energy: r.Energy, Tolerance: r.Tolerance, Workers: r.Workers, Seed: r.Seed, Progress: r.progressFor("solve"), Scores: !r.byMoments(l),
 	})
 	if err != nil {
 		return err
@@ -120,6 +120,12 @@ func (r *run) chooseSetting(ctx context.Context, l *labelled) error {
 	}
 	l.record.Choice = r.choiceFigures(l, d)
 	return r.takeScores(l.data, l.field, d.Chosen)
+}
+
+// byMoments says that p = 2 is all that is asked for numbers: the spread of the labels then brings the left-out answers
+// with it (judgeNumbers), at no further solve.
+func (r *run) byMoments(l *labelled) bool {
+	return l.data.labels.Task == encode.Numbers && len(r.P) == 1 && r.P[0] == 2 && len(r.Neighbors) <= 1 && len(r.Kernels) <= 1 && len(r.Bandwidths) <= 1
 }
 
 // chosenLabels gives the labels on the graph that choose will see: with tethers, on the extra vertices.

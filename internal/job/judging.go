@@ -9,6 +9,7 @@ import (
 	"pinfill/internal/choose"
 	"pinfill/internal/encode"
 	"pinfill/internal/parallel"
+	"pinfill/internal/solve"
 	"pinfill/internal/trust"
 )
 
@@ -156,18 +157,26 @@ func (r *run) fillClasses(l *labelled, keep *kept) {
 
 func (r *run) judgeNumbers(ctx context.Context, l *labelled) error {
 	l.result = r.newResult(l, nil)
+	y := l.field.labels.Target[0]
 	left := l.chosen.Left()
-	if left == nil {
+	var fold []int32
+	switch {
+	case left != nil:
+		fold = left.Fold
+	case r.byMoments(l) && len(y) >= fewestNumbers:
+		fold = choose.FoldsOf(l.field.labels, choose.Folds(l.field.graph, 1), r.Seed)
+	default:
 		return nil
 	}
-	spread, leftSpread, err := r.spreads(ctx, l, left.Fold)
+	spread, leftSpread, means, err := r.spreads(ctx, l, fold)
 	if err != nil {
 		return err
 	}
-	y := l.field.labels.Target[0]
-	e := trust.NumberEvidence{Given: y, Spread: leftSpread}
-	for k := range y {
-		e.LeftOut = append(e.LeftOut, left.Score[k][0])
+	e := trust.NumberEvidence{Given: y, Spread: leftSpread, LeftOut: means}
+	if left != nil {
+		for k := range y {
+			e.LeftOut[k] = left.Score[k][0]
+		}
 	}
 	keep := &kept{Numbers: &e, Coverage: r.Coverage, Drawn: drawn[r.Drawn], spread: spread}
 	if err := keep.ready(); err != nil {
@@ -175,6 +184,9 @@ func (r *run) judgeNumbers(ctx context.Context, l *labelled) error {
 	}
 	l.keep = keep
 	p, f := keep.intervals.Promise(), keep.intervals.Figures()
+	if left == nil {
+		l.record.Choice.Candidates[0].Error, l.record.Choice.Candidates[0].LeftOut = Number(f.RMSE), p.Labels
+	}
 	t := &TrustFigures{Promise: p.Sentence(), Labels: p.Labels, Floor: Number(p.Floor), RMSE: figure(f.RMSE), MAE: figure(f.MAE), Note: leftOutNote}
 	res := l.result
 	res.Low, res.High = make([]float64, len(res.Origin)), make([]float64, len(res.Origin))
@@ -194,9 +206,14 @@ func (r *run) judgeNumbers(ctx context.Context, l *labelled) error {
 	return nil
 }
 
+// fewestNumbers is the least number of labels from which intervals are drawn.
+const fewestNumbers = 10
+
 // spreads gives how far the labels around each vertex disagree, and the same at each label with its fold left out:
 // the harmonic extensions (p = 2) of the labels and of their squares, taken about their mean so that no digits cancel.
-func (r *run) spreads(ctx context.Context, l *labelled, fold []int32) (field, left []float64, err error) {
+//
+// means are the left-out answers at p = 2.
+func (r *run) spreads(ctx context.Context, l *labelled, fold []int32) (field, left, means []float64, err error) {
 	labels := l.field.labels
 	y := labels.Target[0]
 	var mean float64
@@ -211,20 +228,22 @@ func (r *run) spreads(ctx context.Context, l *labelled, fold []int32) (field, le
 	problem := r.problem(l.field, 2)
 	rough := r.solveSettings()
 	rough.Rough = true // a scale for intervals, not an answer
-	fields, _, err := choose.Solve(ctx, problem, moments, nil, rough)
+	fields, err := r.momentFields(ctx, l, problem, moments, mean, rough)
 	if err != nil {
-		return nil, nil, err
+		return nil, nil, nil, err
 	}
 	out, err := choose.LeaveOut(ctx, problem, moments, choose.LeaveOptions{Fold: fold, Workers: r.Workers, Start: fields, Rough: true})
 	if err != nil {
-		return nil, nil, err
+		return nil, nil, nil, err
 	}
 	if field, err = trust.Spread(fields[0][:l.field.n], fields[1][:l.field.n]); err != nil {
-		return nil, nil, err
+		return nil, nil, nil, err
 	}
 	m, sq := make([]float64, len(y)), make([]float64, len(y))
+	means = make([]float64, len(y))
 	for k := range y {
 		m[k], sq[k] = out.Score[k][0], out.Score[k][1]
+		means[k] = mean + m[k]
 	}
 	left, err = trust.Spread(m, sq)
 	for k, v := range left {
@@ -232,7 +251,26 @@ func (r *run) spreads(ctx context.Context, l *labelled, fold []int32) (field, le
 			left[k] = 0 // its left-out answer is missing too
 		}
 	}
-	return field, left, err
+	return field, left, means, err
+}
+
+// momentFields are the harmonic extensions of the moments. At p = 2 the first is the answer itself.
+func (r *run) momentFields(ctx context.Context, l *labelled, problem solve.Problem, moments choose.Labels, mean float64, rough solve.Settings) ([][]float64, error) {
+	if l.setting.P != 2 || l.field.n != l.field.graph.N {
+		fields, _, err := choose.Solve(ctx, problem, moments, nil, rough)
+		return fields, err
+	}
+	squares := moments
+	squares.Target = moments.Target[1:]
+	fields, _, err := choose.Solve(ctx, problem, squares, nil, rough)
+	if err != nil {
+		return nil, err
+	}
+	first := make([]float64, l.field.n)
+	for v, f := range l.field.scores[0] {
+		first[v] = f - mean
+	}
+	return [][]float64{first, fields[0]}, nil
 }
 
 // abstain empties the rows that are too doubtful.

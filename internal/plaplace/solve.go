@@ -155,7 +155,7 @@ func (s *Solver) finish(ctx context.Context, f []float64, w *work, tolerance flo
 func (s *Solver) polish(ctx context.Context, x point, w *work, limit int) error {
 	stop, tolerance := 1e-8, 1e-5
 	if s.p == 2 {
-		stop, tolerance = 1e-6, 1e-3 // linear: the product is what is left
+		stop, tolerance = 1e-6, 1e-5 // linear: the product is what is left
 	}
 	_, err := s.iterate(ctx, x, w, s.p, s.eps, rowPad, stop, tolerance, limit, true)
 	return err
