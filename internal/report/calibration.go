@@ -21,7 +21,11 @@ func calibrationPlot(bins []Bin) *drawing {
 		f.line("whisker", x-4, f.py(lo), x+4, f.py(lo))
 		f.line("whisker", x-4, f.py(hi), x+4, f.py(hi))
 		f.path("point", string(glyph(nil, 0, x, f.py(b.Accuracy), min(3+math.Sqrt(float64(b.Count))/2, 9))))
-		f.text("value", "start", x+9, f.py(b.Accuracy)+14, "n="+count(b.Count))
+		if x > f.right-50 {
+			f.text("value", "end", x-10, f.py(lo)+4, "n="+count(b.Count))
+		} else {
+			f.text("value", "start", x+6, f.py(lo)+4, "n="+count(b.Count))
+		}
 		desc += fmt.Sprintf("%s at confidence %s, %s right. ", plural(b.Count, "label"), percent(b.Confidence), percent(b.Accuracy))
 	}
 	f.Desc = desc

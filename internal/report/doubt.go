@@ -14,6 +14,9 @@ type weakRow struct {
 // mostWeak is how many of the weakest rows are listed.
 const mostWeak = 12
 
+// mostClosest is how many labels are listed that stand but come closest to being disputed.
+const mostClosest = 3
+
 // unsureBelow is the confidence below which an answer is counted as doubtful: not clearly better than the toss of a
 // coin (common practice).
 const unsureBelow = 0.6
@@ -112,6 +115,9 @@ func (p *runPage) setSizes() *drawing {
 	f := h.draw("sets", "Size of the sets", "classes in the set", "rows", func(v float64) string { return count(int(v)) })
 	f.Desc = fmt.Sprintf("%s of %s hold one class.", count(single), plural(total, "set"))
 	f.Caption = fmt.Sprintf("Each set is meant to hold the true class with probability %s. %s of the sets name a single class.", percent(p.coverage()), percent(float64(single)/float64(total)))
+	if bySize[0] > 0 {
+		f.Caption += fmt.Sprintf(" %s hold none: no class is as likely there as labels usually were, which is a doubt of its own.", percent(bySize[0]/float64(total)))
+	}
 	return f.drawing
 }
 
@@ -120,6 +126,12 @@ func (p *runPage) whatToDoubt() {
 	for _, d := range p.Doubts.List {
 		if d.Disputed {
 			p.Disputed++
+			p.Closest = append(p.Closest, d)
+		}
+	}
+	for _, d := range p.Doubts.List { // a few more that the others would give another label
+		if !d.Disputed && d.Given != d.Says && len(p.Closest) < p.Disputed+mostClosest {
+			p.Closest = append(p.Closest, d)
 		}
 	}
 	a := &p.Answers

@@ -65,8 +65,9 @@ func (h histogram) draw(id, title, xName, yName string, xText func(float64) stri
 	f := newFrame(id, title, 420, 250)
 	f.x0, f.x1 = h.lo, h.lo+h.step*float64(len(h.bins))
 	most := float64(max(1, slices.Max(h.bins)))
-	yTicks := niceTicks(0, most, 4)
-	f.y0, f.y1 = 0, max(most, yTicks[len(yTicks)-1])
+	step := niceStep(most / 4)
+	f.y0, f.y1 = 0, math.Ceil(most/step)*step
+	yTicks := niceTicks(0, f.y1, 4)
 	whole := yTicks[:0]
 	for _, v := range yTicks {
 		if v == math.Trunc(v) {

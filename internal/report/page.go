@@ -20,6 +20,7 @@ type runPage struct {
 	Calibrate *drawing
 	TrustRows []row
 	Disputed  int
+	Closest   []Dispute // what of the doubts is listed
 	Weak      []weakRow
 	WeakNote  string
 	Maps      []*drawing

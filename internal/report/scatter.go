@@ -137,36 +137,58 @@ func (p place) classesPanel(d *drawing, class []int32, names []string, tags bool
 	}
 	p.add(d, "dot none "+p.dotClass(), p.dots(func(i int) bool { return class[i] < 0 }))
 	if tags && len(names) <= 12 {
-		for c, name := range names {
-			if x, y, ok := p.middle(func(i int) bool { return int(class[i]) == c }); ok {
-				x = min(max(x, 8+3.2*float64(min(len(name), 18))), float64(p.w)-8-3.2*float64(min(len(name), 18)))
-				d.text("tag", "middle", x, y+4, short(name, 18))
-			}
-		}
+		p.tags(d, class, names)
 	}
 }
 
-// middle is the median place of some points, moved to the nearest of them so that it lies among them.
-func (p place) middle(take func(i int) bool) (x, y float64, ok bool) {
-	var xs, ys []int32
-	for i := range p.n {
-		if take(i) {
-			xs, ys = append(xs, p.x[i]), append(ys, p.y[i])
+// tags writes each class's name where its points are thickest and others few, clear of the tags before it.
+func (p place) tags(d *drawing, class []int32, names []string) {
+	const side = 14 // of a cell, in units
+	wide, high := p.w/side+1, p.h/side+1
+	cells := make([][]int, len(names))
+	for c := range cells {
+		cells[c] = make([]int, wide*high)
+	}
+	for i, c := range class {
+		if c >= 0 {
+			cells[c][int(p.y[i])/fine/side*wide+int(p.x[i])/fine/side]++
 		}
 	}
-	if xs == nil {
-		return 0, 0, false
-	}
-	sx, sy := slices.Sorted(slices.Values(xs)), slices.Sorted(slices.Values(ys))
-	mx, my := sx[len(sx)/2], sy[len(sy)/2]
-	best, at := math.Inf(1), 0
-	for i := range xs {
-		dx, dy := float64(xs[i]-mx), float64(ys[i]-my)
-		if d := dx*dx + dy*dy; d < best {
-			best, at = d, i
+	type box struct{ x, y, w float64 }
+	var taken []box
+	for c, name := range names {
+		text := short(name, 18)
+		half := 3.6 * float64(len([]rune(text)))
+		best, at := 0, box{}
+		for cell, n := range cells[c] {
+			if n == 0 {
+				continue
+			}
+			score := 0
+			cx, cy := cell%wide, cell/wide
+			for y := max(cy-1, 0); y <= min(cy+1, high-1); y++ {
+				for x := max(cx-1, 0); x <= min(cx+1, wide-1); x++ {
+					for other := range cells {
+						if other == c {
+							score += 2 * cells[other][y*wide+x]
+						} else {
+							score -= cells[other][y*wide+x]
+						}
+					}
+				}
+			}
+			score += 1000 // a class among others still gets its name
+			b := box{min(max(side*(float64(cx)+.5), half+3), float64(p.w)-half-3), side * (float64(cy) + .5), half}
+			clear := !slices.ContainsFunc(taken, func(t box) bool { return math.Abs(t.x-b.x) < t.w+b.w+2 && math.Abs(t.y-b.y) < 14 })
+			if clear && score > best {
+				best, at = score, b
+			}
+		}
+		if best > 0 {
+			taken = append(taken, at)
+			d.text("tag", "middle", at.x, at.y+4, text)
 		}
 	}
-	return float64(xs[at]) / fine, float64(ys[at]) / fine, true
 }
 
 // ramp is the number of colours of numbers, doubtRamp that of doubt.
@@ -216,27 +238,61 @@ func mapPanels(m *Map, task Task, names []string) []*drawing {
 	}
 	given.Desc = fmt.Sprintf("Where the given labels lie among the points, by %s and %s.", m.XName, m.YName)
 	answers.Desc = "The label of each point drawn."
-	doubt := p.panel("map-doubt", "Doubt")
-	lo, hi := 0.0, 1.0
-	text := percent
-	if task == Numbers {
-		lo, hi = doubtSpan(m.Doubt)
-		text = func(v float64) string { return percent(v) }
-	}
+	return []*drawing{given, answers, p.doubtPanel(m, task)}
+}
+
+// doubtEdges part the doubt of classes: most answers of a good run are in the first steps. The last edge is one less
+// unsureBelow.
+var doubtEdges = [doubtRamp - 1]float64{.02, .1, .2, 1 - unsureBelow}
+
+// doubtPanel draws the doubt in steps, the doubtful larger and over the sure.
+func (p place) doubtPanel(m *Map, task Task) *drawing {
+	d := p.panel("map-doubt", "Doubt")
+	d.Desc = "How unsure the answer of each point is."
+	lo, hi := doubtSpan(m.Doubt)
 	some := false
 	for s := range doubtRamp {
-		d := p.dots(func(i int) bool { return step(m.Doubt[i], lo, hi, doubtRamp) == s })
-		some = some || d != ""
-		p.add(doubt, "dot "+p.dotClass()+" u"+strconv.Itoa(s), d)
+		data := p.dots(func(i int) bool {
+			if task == Classes {
+				return doubtStep(m.Doubt[i]) == s
+			}
+			return step(m.Doubt[i], lo, hi, doubtRamp) == s
+		})
+		some = some || data != ""
+		p.add(d, "dot "+p.dotClass()+" u"+strconv.Itoa(s), data)
 	}
-	p.add(doubt, "dot none "+p.dotClass(), p.dots(func(i int) bool { return !m.Given[i] && math.IsNaN(m.Doubt[i]) }))
-	doubt.Desc = "How unsure the answer of each point is."
-	if some {
-		doubt.Legend = rampLegend("w", lo, hi, doubtRamp, text)
-	} else {
-		doubt.Legend = []legend{{Key: string(glyph(nil, 0, 0, 0, 4)), Mark: "none-key", Text: "not known: too few labels to leave some out"}}
+	p.add(d, "dot none "+p.dotClass(), p.dots(func(i int) bool { return !m.Given[i] && math.IsNaN(m.Doubt[i]) }))
+	switch {
+	case !some:
+		d.Legend = []legend{{Key: string(glyph(nil, 0, 0, 0, 4)), Mark: "none-key", Text: "not known: too few labels to leave some out"}}
+	case task == Numbers:
+		d.Legend = rampLegend("w", lo, hi, doubtRamp, percent)
+	default:
+		d.Legend = rampLegend("w", 0, 1, doubtRamp, percent)
+		for s := range d.Legend {
+			switch {
+			case s == doubtRamp-1:
+				d.Legend[s].Text = "over " + percent(doubtEdges[s-1])
+			case s == 0:
+				d.Legend[s].Text = "under " + percent(doubtEdges[0])
+			default:
+				d.Legend[s].Text = percent(doubtEdges[s-1]) + " to " + percent(doubtEdges[s])
+			}
+		}
 	}
-	return []*drawing{given, answers, doubt}
+	return d
+}
+
+// doubtStep is the step of a class's doubt, -1 where it is not known.
+func doubtStep(v float64) int {
+	if math.IsNaN(v) {
+		return -1
+	}
+	s := 0
+	for s < len(doubtEdges) && v >= doubtEdges[s] {
+		s++
+	}
+	return s
 }
 
 func classLegend(names []string) []legend {

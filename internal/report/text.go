@@ -60,7 +60,7 @@ func percent(share float64) string {
 	case p == 0 || p == 100 || p >= 10 && p < 99.5:
 		return strconv.FormatFloat(p, 'f', 0, 64) + "%"
 	}
-	return strconv.FormatFloat(p, 'f', 1, 64) + "%"
+	return strings.TrimSuffix(strconv.FormatFloat(p, 'f', 1, 64), ".0") + "%"
 }
 
 // power writes p as the flag takes it.
