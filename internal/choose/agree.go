@@ -62,7 +62,7 @@ func (a Answers) agree(b Answers, size float64) float64 {
 	}
 	var s float64
 	for k, v := range a.Value {
-		s += (v - b.Value[k]) * (v - b.Value[k])
+		s += float64((v - b.Value[k]) * (v - b.Value[k]))
 	}
 	return 1 - math.Sqrt(s/float64(len(a.Value)))/size
 }

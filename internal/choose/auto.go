@@ -252,7 +252,7 @@ func paired(a, b []float64) (gain, stdError float64) {
 	m := mean(diff)
 	var v float64
 	for _, x := range diff {
-		v += (x - m) * (x - m)
+		v += float64((x - m) * (x - m))
 	}
 	n := float64(len(diff))
 	return m, math.Sqrt(v / (n - 1) / n)

@@ -104,7 +104,7 @@ func (w Weights) Shares(dst []float64, score func(c int) float64) []float64 {
 	dst = dst[:0]
 	var t float64
 	for c, m := range w {
-		v := m * max(score(c), 0)
+		v := float64(m * max(score(c), 0))
 		dst = append(dst, v)
 		t += v
 	}

@@ -128,7 +128,7 @@ func (s *Score) judge(l Labels) {
 	m := mean(all)
 	var v float64
 	for _, x := range all {
-		v += (x - m) * (x - m)
+		v += float64((x - m) * (x - m))
 	}
 	n := float64(len(all))
 	se := math.Sqrt(v / max(n-1, 1) / n)

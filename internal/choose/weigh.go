@@ -46,7 +46,7 @@ const (
 func between(v, w Weights, t float64) Weights {
 	a, b := v.logs(), w.logs()
 	for c := range a {
-		a[c] += t * (b[c] - a[c])
+		a[c] += float64(t * (b[c] - a[c]))
 	}
 	return fromLogs(a)
 }

@@ -9,7 +9,7 @@ import (
 // be rounded, so that no compiler fuses it into a sum.
 
 // uniform draws from [0, 1).
-func uniform(r *rand.Rand) float64 { return float64(r.Uint64()>>11) / (1 << 53) }
+func uniform(r *rand.Rand) float64 { return float64(float64(r.Uint64()>>11) / (1 << 53)) }
 
 // normal draws a value of mean 0 and variance 1, nearly Gaussian: the sum of twelve uniform values less 6.
 func normal(r *rand.Rand) float64 {

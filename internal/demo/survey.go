@@ -137,8 +137,8 @@ func survey(seed uint64) (bottom, grain *dataset) {
 				northOrigin + north,
 				g.depth(x, y) + noise(0.08),
 				echo.backscatter + float64(0.9*gain.at(float64(6*x), float64(6*y))) + noise(2.6),
-				max(0.1, echo.roughness*(1+noise(0.22))+noise(0.35)),
-				max(0, float64(50*steep)+echo.slope*(1+noise(0.25))),
+				max(0.1, float64(echo.roughness*(1+noise(0.22)))+noise(0.35)),
+				max(0, float64(50*steep)+float64(echo.slope*(1+noise(0.25)))),
 			}
 			for c := range columns {
 				columns[c].values = append(columns[c].values, values[c])

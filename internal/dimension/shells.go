@@ -33,7 +33,7 @@ func shells(l *neighbors.Lists, tied float64, workers int) Figure {
 					break
 				}
 				x = append(x, math.Log(dist[from]))
-				y = append(y, math.Log(tied+float64(from+to)/2))
+				y = append(y, math.Log(tied+float64(float64(from+to)/2)))
 				from = to
 			}
 			mx, my := mean(x), mean(y)

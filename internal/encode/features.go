@@ -209,7 +209,7 @@ func (f *Features) putMedians(t *table.Table) ([]Warning, error) {
 			return nil, fault.Inputf("G08", "%s: column %s has no value at all; leave it out with --ignore=%s", fault.Name(t.Name()), fault.Quote(f.Names[j]), f.Names[j])
 		}
 		slices.Sort(there)
-		f.Median[j] = there[len(there)/2]/2 + there[(len(there)-1)/2]/2
+		f.Median[j] = float64(there[len(there)/2]/2) + float64(there[(len(there)-1)/2]/2)
 		if filled := m.N - len(there); filled > 0 {
 			for i := range m.N {
 				if math.IsNaN(m.Data[i*m.D+j]) {

@@ -94,8 +94,8 @@ func (h *Health) measureDegrees(a *sparse.CSR) {
 	}
 	for d, c := range with {
 		x := float64(d) - mean
-		m2 += float64(c) * x * x
-		m3 += float64(c) * x * x * x
+		m2 += float64(float64(c) * x * x)
+		m3 += float64(float64(c) * x * x * x)
 	}
 	if m2 > 0 {
 		n := float64(a.N)

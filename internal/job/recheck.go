@@ -152,7 +152,7 @@ func (s *recheck) sentence(x *extension, fresh []pick, fields [][]float64) strin
 		}
 		d := math.Abs(fields[0][v] - p.value)
 		worst = max(worst, d)
-		square += d * d
+		square += float64(d * d)
 	}
 	if len(m.Classes) > 0 {
 		return fmt.Sprintf("recheck: solving again with %d of the new rows changes the label of %d (%.1f%%)", len(fresh), changed, 100*float64(changed)/float64(len(fresh)))

@@ -118,7 +118,7 @@ func newApproximation(ctx context.Context, a *sddm) (*approximation, error) {
 					end = m - 1
 				}
 			}
-			w := e.w / d * rest
+			w := float64(e.w / d * rest)
 			one, two := e.to, merged[j].to
 			switch {
 			case one < 0:

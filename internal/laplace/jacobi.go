@@ -64,7 +64,7 @@ func (l *lanczos) below(t float64) bool {
 		tk := inv - t
 		if k > 0 {
 			prev := l.inverse[k-1]
-			tk += l.beta[k] * prev * (1 - prev/d)
+			tk += float64(l.beta[k] * prev * (1 - prev/d))
 		}
 		if tk <= 0 {
 			return true

@@ -217,11 +217,11 @@ func (s *System) eliminationPays(ctx context.Context, rhs int) (bool, error) {
 	if s.plan == nil {
 		return false, nil
 	}
-	work := 2 * float64(len(s.plan.row)) * float64(rhs)
+	work := float64(2 * float64(len(s.plan.row)) * float64(rhs))
 	if s.factor == nil {
 		work += s.plan.work
 	}
-	return work <= iterateCost*float64(nnz)*float64(rhs)+smallChange, nil
+	return work <= float64(iterateCost*float64(nnz)*float64(rhs))+smallChange, nil
 }
 
 // canEliminate says whether an elimination of at most so much work is possible.

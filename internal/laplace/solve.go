@@ -67,7 +67,7 @@ func (s *System) dirichlet(values, x []float64) (job, error) {
 		}
 		low, high = min(low, v), max(high, v)
 	}
-	mid, half := low/2+high/2, high/2-low/2
+	mid, half := float64(low/2)+float64(high/2), float64(high/2)-float64(low/2)
 	if len(values) == 0 {
 		mid, half = 0, 0
 	}

@@ -97,7 +97,7 @@ func (w *worker) search(s sought, own, other []bound) []int32 {
 			if set[u] != held {
 				continue
 			}
-			if key := sign*f[u] + float64(alpha*length[k]); key < b.key {
+			if key := float64(sign*f[u]) + float64(alpha*length[k]); key < b.key {
 				b.key, b.value, b.dist, b.parent = key, sign*f[u], length[k], u
 			}
 		}

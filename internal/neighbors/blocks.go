@@ -43,7 +43,7 @@ func newBlocks(t *tree, workers int) *blocks {
 	centre := make([]float64, d)
 	low, high := t.lowHigh(1)
 	for j := range centre {
-		centre[j] = low[j] + (high[j]-low[j])/2
+		centre[j] = low[j] + float64((high[j]-low[j])/2)
 	}
 	parallel.For(workers, 1<<b.level, 16, func(from, to int) {
 		for v := from; v < to; v++ {

@@ -14,9 +14,9 @@ import (
 const AutoLimit = 600e9
 
 // Nanoseconds of one step in D columns, fitted by hand to measurements of each engine on one processor of 2023.
-func pointCost(d int) float64 { return 4 + 0.7*float64(d) }    // a distance in the tree
-func boxCost(d int) float64   { return 3 + 1.2*float64(d) }    // a box in the tree
-func pairCost(d int) float64  { return 1.5 + 0.32*float64(d) } // a pair in blocks
+func pointCost(d int) float64 { return 4 + float64(0.7*float64(d)) }    // a distance in the tree
+func boxCost(d int) float64   { return 3 + float64(1.2*float64(d)) }    // a box in the tree
+func pairCost(d int) float64  { return 1.5 + float64(0.32*float64(d)) } // a pair in blocks
 
 // plan is the engine for an exact search and the work it is expected to do.
 type plan struct {
@@ -42,7 +42,7 @@ func (t *tree) plan(ctx context.Context, k int, o Options) plan {
 	})
 	var cost float64
 	for _, f := range finders {
-		cost += float64(f.distances)*pointCost(d) + float64(f.boxes)*boxCost(d)
+		cost += float64(float64(f.distances)*pointCost(d)) + float64(float64(f.boxes)*boxCost(d))
 	}
 	p := plan{work: cost / float64(len(places)) * float64(n)}
 	if t.metric == points.Manhattan || cost/float64(len(places)) < 0.1*float64(n)*pairCost(d) && n > 4*bucketSize {

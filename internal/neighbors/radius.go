@@ -88,7 +88,7 @@ func newBuckets(t *tree) *buckets {
 		low, high := t.lowHigh(b.count() + i)
 		centre, half := make([]float64, len(low)), 0.0
 		for j := range low {
-			centre[j] = low[j] + (high[j]-low[j])/2
+			centre[j] = low[j] + float64((high[j]-low[j])/2)
 			half = max(half, high[j]-centre[j], centre[j]-low[j])
 		}
 		_, number := math.Frexp(half)
@@ -179,7 +179,7 @@ func (b *buckets) beside(i int, radius, bound float64) []int32 {
 	nearest := make([]float64, len(low))
 	var out []int32
 	for _, c := range b.classes {
-		grow := (radius + c.half) * (1 + 1e-9) // rounding of the centres
+		grow := float64((radius + c.half) * (1 + 1e-9)) // rounding of the centres
 		for j := range low {
 			box[j] = [2]float64{low[j] - grow, high[j] + grow}
 		}

@@ -22,7 +22,7 @@ func (s *Solver) certificate(x point, values []float64, c enclosure, ok bool) Ce
 			t := values[v] - x.f[v]
 			cert.Width = max(cert.Width, t-c.lower[v], c.upper[v]-t)
 		}
-		cert.Width = cert.Width*(1+8*unit) + 2*unit
+		cert.Width = float64(cert.Width*(1+8*unit)) + 2*unit
 	}
 	cert.Gap, cert.Imbalance = s.balance(x)
 	return cert

@@ -151,7 +151,7 @@ func (s *Solver) step(w *work, p, eps float64) float64 {
 		if k%3 == 2 || math.IsInf(ghi, 0) {
 			t = 0.5 * (lo + hi)
 		} else {
-			t = lo + (hi-lo)*(glo/(glo-ghi))
+			t = lo + float64((hi-lo)*(glo/(glo-ghi)))
 		}
 		g := slope(t)
 		if math.Abs(g) <= 0.1*math.Abs(g0) && k >= 1 || hi-lo < 1e-6*hi {

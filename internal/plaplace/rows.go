@@ -66,8 +66,8 @@ func (s *Solver) rowAt(x point, v int) row {
 		ln := math.Log(size)
 		pl := float64((s.p - 1) * ln)
 		phi := math.Exp(pa + pl - top)
-		inExponent := unit * (2*math.Abs(pa) + 5*math.Abs(pl) + 2*math.Abs(top) + s.p)
-		r.err += phi * (1.4*inExponent + 1.4*(s.p-1)*bound/size + 4*unit)
+		inExponent := unit * (float64(2*math.Abs(pa)) + float64(5*math.Abs(pl)) + float64(2*math.Abs(top)) + s.p)
+		r.err += float64(phi * (float64(1.4*inExponent) + float64(1.4*(s.p-1)*bound/size) + 4*unit))
 		r.sum += phi
 		r.curv += (s.p - 1) * phi / size
 		if d > 0 {
@@ -92,7 +92,7 @@ func (s *Solver) linearRowAt(x point, v int) row {
 		size := math.Abs(phi)
 		r.net += phi
 		r.sum += size
-		r.err += size*s.conductanceError + float64(c*bound)
+		r.err += float64(size*s.conductanceError) + float64(c*bound)
 		r.curv += c
 		r.step = max(r.step, math.Abs(d))
 	}

@@ -20,7 +20,7 @@ func calibrationPlot(bins []Bin) *drawing {
 		f.line("whisker", x, f.py(lo), x, f.py(hi))
 		f.line("whisker", x-4, f.py(lo), x+4, f.py(lo))
 		f.line("whisker", x-4, f.py(hi), x+4, f.py(hi))
-		f.path("point", string(glyph(nil, 0, x, f.py(b.Accuracy), min(3+math.Sqrt(float64(b.Count))/2, 9))))
+		f.path("point", string(glyph(nil, 0, x, f.py(b.Accuracy), min(3+float64(math.Sqrt(float64(b.Count))/2), 9))))
 		if x > f.right-50 {
 			f.text("value", "end", x-10, f.py(lo)+4, "n="+count(b.Count))
 		} else {
@@ -41,7 +41,7 @@ func wilson(s, n float64) (lo, hi float64) {
 		return 0, 1
 	}
 	mid := (s + z*z/(2*n)) / (1 + z*z/n)
-	half := z / (1 + z*z/n) * math.Sqrt(s*(1-s)/n+z*z/(4*n*n))
+	half := float64(z / (1 + z*z/n) * math.Sqrt(s*(1-s)/n+z*z/(4*n*n)))
 	return max(mid-half, 0), min(mid+half, 1)
 }
 

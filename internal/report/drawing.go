@@ -63,7 +63,7 @@ func newFrame(id, title string, w, h int) *frame {
 }
 
 func (f *frame) px(v float64) float64 {
-	return f.left + (f.right-f.left)*clamp01((v-f.x0)/(f.x1-f.x0))
+	return f.left + float64((f.right-f.left)*clamp01((v-f.x0)/(f.x1-f.x0)))
 }
 
 func (f *frame) py(v float64) float64 {
@@ -71,7 +71,7 @@ func (f *frame) py(v float64) float64 {
 	if f.log {
 		t = math.Log(v/f.y0) / math.Log(f.y1/f.y0)
 	}
-	return f.bottom - (f.bottom-f.top)*clamp01(t)
+	return f.bottom - float64((f.bottom-f.top)*clamp01(t))
 }
 
 func clamp01(t float64) float64 {
@@ -111,7 +111,7 @@ func niceTicks(lo, hi float64, want int) []float64 {
 	first := math.Ceil(lo/step - 1e-9)
 	for k := 0.0; ; k++ {
 		v := (first + k) * step
-		if v > hi+1e-9*step || k > 50 {
+		if v > hi+float64(1e-9*step) || k > 50 {
 			return ticks
 		}
 		ticks = append(ticks, v)
@@ -131,7 +131,7 @@ func niceStep(v float64) float64 {
 
 // logTicks gives the powers of ten from lo to hi, thinned to about six.
 func logTicks(lo, hi float64) []float64 {
-	from, to := math.Ceil(math.Log10(lo)-1e-9), math.Floor(math.Log10(hi)+1e-9)
+	from, to := math.Ceil(float64(math.Log10(lo))-1e-9), math.Floor(float64(math.Log10(hi))+1e-9)
 	step := max(1, math.Ceil((to-from)/6))
 	var ticks []float64
 	for e := from; e <= to; e += step {
@@ -172,7 +172,7 @@ func glyph(dst []byte, shape int, x, y, r float64) []byte {
 		if i == 0 {
 			cmd = 'M'
 		}
-		put(cmd, x+r*points[i], y+r*points[i+1])
+		put(cmd, x+float64(r*points[i]), y+float64(r*points[i+1]))
 	}
 	return append(dst, 'z')
 }

@@ -226,7 +226,7 @@ func (p *runPage) guess() float64 {
 		}
 		d := a.Value[row] - sum // Welford (1962): sum is the running mean
 		sum += d / n
-		sq += d * (a.Value[row] - sum)
+		sq += float64(d * (a.Value[row] - sum))
 	}
 	switch {
 	case n < 2:

@@ -68,7 +68,7 @@ func errorPlot(trials []Trial, task Task, guess float64) *drawing {
 		}
 		s := slices.Index(names, series(t))
 		spread := .7 / float64(max(len(names), 1))
-		x := f.px(float64(slices.Index(ps, t.P)) + spread*(float64(s)-float64(len(names)-1)/2))
+		x := f.px(float64(slices.Index(ps, t.P)) + float64(spread*(float64(s)-float64(float64(len(names)-1)/2))))
 		y, e := f.py(t.Error), zeroNaN(t.StdError)
 		f.line("whisker", x, f.py(max(t.Error-e, 0)), x, f.py(t.Error+e))
 		f.line("whisker", x-3, f.py(t.Error+e), x+3, f.py(t.Error+e))
@@ -161,20 +161,20 @@ func matrixPlot(trials []Trial, agreement [][]float64, advised int) *drawing {
 	}
 	const left, top = 46.0, 26.0
 	cell := min(max(420/float64(n), 11), 52)
-	d := &drawing{ID: "agreement", Title: "Agreement of each two settings", W: int(left + cell*float64(n) + 8), H: int(top + cell*float64(n) + 24)}
+	d := &drawing{ID: "agreement", Title: "Agreement of each two settings", W: int(left + float64(cell*float64(n)) + 8), H: int(top + float64(cell*float64(n)) + 24)}
 	lowest, pair := 2.0, [2]int{}
 	for i := range n {
-		y := top + cell*float64(i)
-		d.text("tick", "end", left-6, y+cell/2+4, matrixName(trials, i))
+		y := top + float64(cell*float64(i))
+		d.text("tick", "end", left-6, y+float64(cell/2)+4, matrixName(trials, i))
 		if cell >= 24 || i%int(math.Ceil(24/cell)) == 0 {
-			d.text("tick", "middle", left+cell*(float64(i)+.5), top-8, matrixName(trials, i))
+			d.text("tick", "middle", left+float64(cell*(float64(i)+.5)), top-8, matrixName(trials, i))
 		}
 		for j := range n {
 			a := agreement[i][j]
 			if finite(a) && a < lowest && i != j {
 				lowest, pair = a, [2]int{i, j}
 			}
-			d.rect("a"+strconv.Itoa(shade(a)), left+cell*float64(j)+.5, y+.5, cell-1, cell-1)
+			d.rect("a"+strconv.Itoa(shade(a)), left+float64(cell*float64(j))+.5, y+.5, cell-1, cell-1)
 			if cell >= 30 && finite(a) {
 				class := "cell"
 				if shade(a) >= 4 {
@@ -184,12 +184,12 @@ func matrixPlot(trials []Trial, agreement [][]float64, advised int) *drawing {
 				if a < 1 && text == "100" {
 					text = ">99"
 				}
-				d.text(class, "middle", left+cell*(float64(j)+.5), y+cell/2+4, text)
+				d.text(class, "middle", left+float64(cell*(float64(j)+.5)), y+float64(cell/2)+4, text)
 			}
 		}
 	}
-	d.rect("outline", left, top+cell*float64(advised), cell*float64(n), cell)
-	d.text("name", "middle", left+cell*float64(n)/2, float64(d.H)-6, matrixAxis(trials)+"; the outlined row is the advised one")
+	d.rect("outline", left, top+float64(cell*float64(advised)), cell*float64(n), cell)
+	d.text("name", "middle", left+float64(cell*float64(n)/2), float64(d.H)-6, matrixAxis(trials)+"; the outlined row is the advised one")
 	if lowest <= 1 {
 		d.Desc = fmt.Sprintf("Least agreement: settings %d and %d, %s.", pair[0]+1, pair[1]+1, percent(lowest))
 	}

@@ -23,7 +23,7 @@ func Abstain(sureness []float64, threshold, rate float64) ([]bool, error) {
 		}
 	}
 	cut := threshold
-	if budget := int(math.Floor(rate*float64(len(sorted)) + 1e-9)); budget > 0 {
+	if budget := int(math.Floor(float64(rate*float64(len(sorted))) + 1e-9)); budget > 0 {
 		slices.Sort(sorted)
 		if budget == len(sorted) {
 			cut = math.Inf(1)

@@ -145,8 +145,8 @@ func (h *strata) ratio(y, x func(k int) float64) Estimate {
 		if n > 0 {
 			sy[st] /= float64(n)
 			sx[st] /= float64(n)
-			totalY += h.weight[st] * sy[st]
-			totalX += h.weight[st] * sx[st]
+			totalY += float64(h.weight[st] * sy[st])
+			totalX += float64(h.weight[st] * sx[st])
 		}
 	}
 	if totalX == 0 {
@@ -183,7 +183,7 @@ func kappa(share [][]float64) float64 {
 			col += share[j][i]
 		}
 		agree += share[i][i]
-		chance += row * col
+		chance += float64(row * col)
 	}
 	if chance >= 1 {
 		return math.NaN()

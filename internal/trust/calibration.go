@@ -95,7 +95,7 @@ func weigh(q [][]float64, given []int) (grid, prior []float64, like [][]float64)
 	}
 	centre := math.Log(priorLead / max(lead, 1e-3))
 	for g := -gridHalf; g <= gridHalf; g++ {
-		t := gridStep * float64(g)
+		t := float64(gridStep * float64(g))
 		grid = append(grid, math.Exp(centre+t))
 		prior = append(prior, -0.5*(t/priorSpread)*(t/priorSpread))
 	}
@@ -147,7 +147,7 @@ func condense(grid, weight []float64) []node {
 			if at == len(grid)-1 {
 				take = need
 			}
-			beta += take * grid[at]
+			beta += float64(take * grid[at])
 			need -= take
 			left -= take
 			if left <= 0 && at < len(grid)-1 {

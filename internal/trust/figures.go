@@ -94,7 +94,7 @@ func reliability(lead []float64, hit []bool) []CalibrationBin {
 func calibrationError(bins []CalibrationBin, n int) float64 {
 	var e float64
 	for _, b := range bins {
-		e += float64(b.Count) / float64(n) * math.Abs(b.Accuracy-b.Confidence)
+		e += float64(float64(b.Count) / float64(n) * math.Abs(b.Accuracy-b.Confidence))
 	}
 	return e
 }

@@ -59,7 +59,7 @@ func NewIntervals(e NumberEvidence, s IntervalSettings) (*Intervals, error) {
 		v.place = append(v.place, i)
 		pred, given = append(pred, f), append(given, e.Given[i])
 		if !v.flat {
-			v.base += e.Spread[i] * e.Spread[i]
+			v.base += float64(e.Spread[i] * e.Spread[i])
 		}
 	}
 	if len(v.place) == 0 {

@@ -23,7 +23,7 @@ func MeasureNumbers(answer, right []float64) NumberFigures {
 		f.Count++
 		f.MAE += math.Abs(d)
 		f.Bias += d
-		square += d * d
+		square += float64(d * d)
 		mean += right[i]
 	}
 	if f.Count == 0 {
@@ -34,7 +34,7 @@ func MeasureNumbers(answer, right []float64) NumberFigures {
 	mean /= n
 	for i, a := range answer {
 		if d := a - right[i]; !math.IsNaN(d) {
-			sum += (right[i] - mean) * (right[i] - mean)
+			sum += float64((right[i] - mean) * (right[i] - mean))
 		}
 	}
 	f.RMSE, f.MAE, f.Bias = math.Sqrt(square/n), f.MAE/n, f.Bias/n
