@@ -36,11 +36,17 @@ func start(ctx context.Context, o *Options) (*run, context.Context, context.Canc
 	if o.TimeLimit > 0 {
 		ctx, cancel = context.WithTimeoutCause(ctx, o.TimeLimit, fault.Limitf("", "the time limit of %v was reached; raise --time-limit", o.TimeLimit))
 	}
+	// The heap is a few large arrays without pointers, cheap to collect: collecting early costs little time and keeps
+	// the peak near what is alive.
+	debug.SetGCPercent(earlyCollection)
 	if o.MemoryLimit > 0 {
 		debug.SetMemoryLimit(o.MemoryLimit)
 	}
 	return r, ctx, cancel
 }
+
+// earlyCollection is the growth of the heap, in per cent, after which it is collected.
+const earlyCollection = 20
 
 // warn notes a warning for the record and tells the user.
 func (r *run) warn(ws ...encode.Warning) {
