@@ -92,8 +92,10 @@ func (r *Result) set(row int, dst []byte) []byte {
 
 // EscapeSetName puts a backslash before | and \ so that a set can be split again.
 func EscapeSetName(name string) string {
-	return strings.NewReplacer(`\`, `\\`, `|`, `\|`).Replace(name)
+	return setEscapes.Replace(name)
 }
+
+var setEscapes = strings.NewReplacer(`\`, `\\`, `|`, `\|`)
 
 // SplitSet undoes the joining of a set.
 func SplitSet(set string) []string {

@@ -44,6 +44,11 @@ func mean(logW, f []float64, top, lo float64) float64 {
 
 // midrange splits the steepest pair. With lengths l = 1/w the slope between i and j is (f_j - f_i)/(l_i + l_j).
 func midrange(logW, f []float64, top float64) float64 {
+	var space [32]float64
+	w := space[:0]
+	for _, l := range logW {
+		w = append(w, math.Exp(l-top))
+	}
 	best, value := 0.0, f[0]
 	for i := range f {
 		for j := range f {
@@ -51,7 +56,7 @@ func midrange(logW, f []float64, top float64) float64 {
 			if rise <= 0 {
 				continue
 			}
-			wi, wj := math.Exp(logW[i]-top), math.Exp(logW[j]-top)
+			wi, wj := w[i], w[j]
 			if wi == 0 || wj == 0 {
 				continue // beyond the range of float64 beside the nearest neighbour: an infinite length
 			}
@@ -68,63 +73,132 @@ func midrange(logW, f []float64, top float64) float64 {
 //	h(t) = |(a_j (t-f_j)+)|_r - |(a_j (f_j-t)+)|_r = 0,
 //
 // where |.|_r is the r-norm. h rises with t and is close to a line even for large p, so that Newton's steps, kept
-// inside the bracket, need few evaluations; a step that leaves the bracket, or halves it too slowly, is a bisection.
+// inside the bracket, need few evaluations. t is counted in u = (t-lo)/(hi-lo), which loses no digits near lo.
 func root(logW, f []float64, p, top, lo, hi float64) float64 {
-	r := p - 1
-	const maxSteps = 200 // bisection alone needs 53 or so; Newton takes 4 to 12
-	t := lo + (hi-lo)/2
-	width := hi - lo
-	for range maxSteps {
-		below, dBelow := side(logW, f, r, p, top, t, 1)
-		above, dAbove := side(logW, f, r, p, top, t, -1)
-		h := below - above
-		switch {
-		case h == 0:
-			return t
-		case h > 0:
-			hi = t
-		default:
-			lo = t
-		}
-		next := t - h/(dBelow+dAbove)
-		if !(next > lo && next < hi) || hi-lo > width/2 {
-			next = lo + (hi-lo)/2
-		}
-		width = hi - lo
-		if next == t || next <= lo || next >= hi {
-			return t
-		}
-		if math.Abs(next-t) <= 0x1p-53*math.Abs(t) {
-			return next
-		}
-		t = next
+	var space [2 * 32]float64
+	k := len(f)
+	g, c := space[:32], space[32:]
+	if k > 32 {
+		g, c = make([]float64, k), make([]float64, k)
 	}
-	return t
+	g, c = g[:k], c[:k]
+	var start, weight float64
+	for j, v := range f {
+		g[j] = (v - lo) / (hi - lo)
+		c[j] = math.Exp(p * (logW[j] - top)) // (w_j / w_top)^p
+		start += float64(c[j] * g[j])
+		weight += c[j]
+	}
+	s := star{logW: logW, top: top, p: p, r: p - 1, g: g, c: c}
+	return lo + (hi-lo)*s.solve(start/weight)
 }
 
-// side is the r-norm of a_j (sign (t - f_j))+ and the size of its slope in t. Powers are taken of ratios to the
-// largest term, so that no p overflows.
-func side(logW, f []float64, r, p, top, t, sign float64) (norm, slope float64) {
+// star is a vertex with neighbours at g, from 0 to 1, both ends taken.
+type star struct {
+	logW, g, c []float64
+	top, p, r  float64
+}
+
+// side is what one side pulls: the logarithm of its r-norm, and the slope of that logarithm in u.
+type side struct{ log, slope float64 }
+
+// solve finds the root in (0, 1), from a first guess.
+func (s *star) solve(u float64) float64 {
+	lo, hi := 0.0, 1.0
+	if !(u > lo && u < hi) {
+		u = 0.5
+	}
+	// Newton takes 3 to 6 steps. Every third after the first eight is a bisection, and 60 of these end any search.
+	const steady, most = 8, 8 + 3*60
+	for step := range most {
+		below, above, near, ok := s.pull(u)
+		if !ok {
+			below, above = s.pullLog(u, 1), s.pullLog(u, -1)
+		}
+		// h and its slope, both over the larger norm, so that no r overflows.
+		m := max(below.log, above.log)
+		a, b := math.Exp(below.log-m), math.Exp(above.log-m)
+		h := a - b
+		switch {
+		case h == 0:
+			return u
+		case h > 0:
+			hi = u
+		default:
+			lo = u
+		}
+		next := u - h/(float64(a*below.slope)+float64(b*above.slope))
+		if !(next > lo && next < hi) || step >= steady && step%3 == 0 {
+			next = lo + (hi-lo)/2
+		} else if math.Abs(next-u) <= 1e-9*near {
+			return next // Newton squares the error: what is left is below the last digit
+		}
+		if next == u || next <= lo || next >= hi {
+			return u
+		}
+		u = next
+	}
+	return u
+}
+
+// pull gives both sides at u from plain powers, and the distance to the nearest neighbour's value. It is not ok where
+// a side leaves the range of float64.
+func (s *star) pull(u float64) (below, above side, near float64, ok bool) {
+	var sb, db, sa, da float64
+	near = 1
+	for j, g := range s.g {
+		switch d := u - g; {
+		case d > 0:
+			term := s.c[j] * power(d, s.r)
+			sb += term
+			db += term / d
+			near = min(near, d)
+		case d < 0:
+			term := s.c[j] * power(-d, s.r)
+			sa += term
+			da += term / -d
+			near = min(near, -d)
+		}
+	}
+	const least = 1e-290 // smaller terms have lost digits
+	if sb < least || sa < least {
+		return below, above, near, false
+	}
+	return side{math.Log(sb) / s.r, db / sb}, side{math.Log(sa) / s.r, da / sa}, near, true
+}
+
+// power is d^r for d in (0, 1].
+func power(d, r float64) float64 {
+	switch r {
+	case 0.5:
+		return math.Sqrt(d)
+	case 2:
+		return d * d
+	case 3:
+		return d * d * d
+	}
+	return math.Exp(r * math.Log(d))
+}
+
+// pullLog is pull for one side in logarithms, for powers and weights beyond the range of float64.
+func (s *star) pullLog(u, sign float64) side {
 	big := math.Inf(-1)
-	for j, v := range f {
-		if d := sign * (t - v); d > 0 {
-			big = max(big, math.Log(d)+(logW[j]-top)*(p/r))
+	log := func(j int, d float64) float64 { return math.Log(d) + (s.logW[j]-s.top)*(s.p/s.r) }
+	for j, g := range s.g {
+		if d := sign * (u - g); d > 0 {
+			big = max(big, log(j, d))
 		}
 	}
 	if math.IsInf(big, -1) {
-		return 0, 0
+		return side{log: big}
 	}
-	var s, ds float64
-	for j, v := range f {
-		d := sign * (t - v)
-		if d <= 0 {
-			continue
+	var sum, slope float64
+	for j, g := range s.g {
+		if d := sign * (u - g); d > 0 {
+			term := math.Exp(s.r * (log(j, d) - big))
+			sum += term
+			slope += term / d
 		}
-		log := math.Log(d) + (logW[j]-top)*(p/r) - big
-		term := math.Exp(r * log)
-		s += term
-		ds += term / d
 	}
-	norm = math.Exp(big + math.Log(s)/r)
-	return norm, norm * ds / s
+	return side{big + math.Log(sum)/s.r, slope / sum}
 }
