@@ -93,7 +93,11 @@ func newRunPage(r *Run) *runPage {
 // drawnText says what of the points is drawn.
 func drawnText(m *Map) string {
 	if len(m.X) < m.Total {
-		return fmt.Sprintf("%s of %s distinct points are drawn, a random sample with seed %d that keeps the labelled ones.", count(len(m.X)), count(m.Total), m.Seed)
+		text := fmt.Sprintf("%s of %s distinct points are drawn, a random sample with seed %d", count(len(m.X)), count(m.Total), m.Seed)
+		if slices.Contains(m.Given, true) {
+			text += " that keeps the labelled ones"
+		}
+		return text + "."
 	}
 	return fmt.Sprintf("All %s distinct points are drawn.", count(m.Total))
 }
