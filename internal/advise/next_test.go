@@ -218,8 +218,13 @@ func TestNextReasons(t *testing.T) {
 func TestNextRefuses(t *testing.T) {
 	g := network([][]float64{{0, 1}, {1, 0}})
 	for _, p := range []NextProblem{
-		{}, {Conductance: g, Rows: []float64{1}}, {Conductance: g, Cost: []float64{1, 0}}, {Conductance: g, Cost: []float64{math.NaN(), 1}},
-		{Conductance: g, Labelled: []int32{1, 0}}, {Conductance: g, Labelled: []int32{2}}, {Conductance: g, Exclude: []bool{true}},
+		{},
+		{Conductance: g, Rows: []float64{1}},
+		{Conductance: g, Cost: []float64{1, 0}},
+		{Conductance: g, Cost: []float64{math.NaN(), 1}},
+		{Conductance: g, Labelled: []int32{1, 0}},
+		{Conductance: g, Labelled: []int32{2}},
+		{Conductance: g, Exclude: []bool{true}},
 	} {
 		p.Count = 1
 		if _, err := Next(context.Background(), p); err == nil {

@@ -57,7 +57,7 @@ func symmetrise(l lists, k, workers int) *sparse.CSR {
 				for ; word != 0; word &= word - 1 {
 					t := w<<6 + bits.TrailingZeros64(word)
 					j := own[t]
-					slot := a.RowPtr[j+1] - 1 - (int(atomic.AddInt32(&extra[j], -1)))
+					slot := a.RowPtr[j+1] - 1 - int(atomic.AddInt32(&extra[j], -1))
 					a.Col[slot], a.Val[slot] = int32(i), dist[t]
 				}
 			}

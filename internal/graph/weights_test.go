@@ -107,8 +107,12 @@ func TestLogWeightsKeepWhatAFloatCannot(t *testing.T) {
 		k Kernel
 		b Bandwidth
 	}{
-		{Gaussian, Bandwidth{H: least / 100}}, {Exponential, Bandwidth{H: least / 1e4}}, {Epanechnikov, Bandwidth{H: least / 2}},
-		{Box, Bandwidth{H: least / 2}}, {Gaussian, Bandwidth{Local: true, H: 1e-6}}, {Box, Bandwidth{Local: true, H: 1e-3}},
+		{Gaussian, Bandwidth{H: least / 100}},
+		{Exponential, Bandwidth{H: least / 1e4}},
+		{Epanechnikov, Bandwidth{H: least / 2}},
+		{Box, Bandwidth{H: least / 2}},
+		{Gaussian, Bandwidth{Local: true, H: 1e-6}},
+		{Box, Bandwidth{Local: true, H: 1e-3}},
 	} {
 		_, err = g.LogWeights(c.k, c.b, 0)
 		var under *UnderflowError

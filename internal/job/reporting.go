@@ -176,11 +176,22 @@ func (r *run) reportTrust(l *labelled) *report.Trust {
 // reportSettings lists the settings in the order of the record. What was typed is told from what was chosen.
 func (r *run) reportSettings(s Settings) []report.Setting {
 	list := []report.Setting{
-		{Name: "p", Value: PText(float64(s.P))}, {Name: "energy", Value: s.Energy}, {Name: "balance", Value: s.Balance}, {Name: "kernel", Value: s.Kernel},
-		{Name: "bandwidth", Value: s.Bandwidth}, {Name: "neighbors", Value: positive(float64(s.Neighbors))}, {Name: "radius", Value: positive(float64(s.Radius))},
-		{Name: "scale", Value: s.Scale}, {Name: "metric", Value: s.Metric}, {Name: "tether", Value: positive(float64(s.Tether))},
-		{Name: "unreachable", Value: s.Unreachable}, {Name: "coverage", Value: positive(float64(s.Coverage))}, {Name: "drawn", Value: s.Drawn},
-		{Name: "tolerance", Value: positive(float64(s.Tolerance))}, {Name: "solve-on", Value: positive(float64(s.SolveOn))}, {Name: "seed", Value: positive(float64(s.Seed))},
+		{Name: "p", Value: PText(float64(s.P))},
+		{Name: "energy", Value: s.Energy},
+		{Name: "balance", Value: s.Balance},
+		{Name: "kernel", Value: s.Kernel},
+		{Name: "bandwidth", Value: s.Bandwidth},
+		{Name: "neighbors", Value: positive(float64(s.Neighbors))},
+		{Name: "radius", Value: positive(float64(s.Radius))},
+		{Name: "scale", Value: s.Scale},
+		{Name: "metric", Value: s.Metric},
+		{Name: "tether", Value: positive(float64(s.Tether))},
+		{Name: "unreachable", Value: s.Unreachable},
+		{Name: "coverage", Value: positive(float64(s.Coverage))},
+		{Name: "drawn", Value: s.Drawn},
+		{Name: "tolerance", Value: positive(float64(s.Tolerance))},
+		{Name: "solve-on", Value: positive(float64(s.SolveOn))},
+		{Name: "seed", Value: positive(float64(s.Seed))},
 	}
 	var out []report.Setting
 	for _, set := range list {

@@ -140,7 +140,7 @@ func (s *System) Reweight(ctx context.Context, val []float64) error {
 	if err := s.fill(false); err != nil {
 		return err
 	}
-	s.engines.reweighted()
+	s.reweighted()
 	return ctx.Err()
 }
 

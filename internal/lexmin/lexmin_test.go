@@ -37,8 +37,16 @@ var inf = math.Inf(1)
 
 // mixed are the kinds of random problem that every property is tried on in turn.
 var mixed = []testproblems.Options{
-	{}, {Branches: true}, {Levels: 3}, {Unit: true, Levels: 2}, {Unit: true}, {Components: 3}, {Spread: 23.03},
-	{Spread: 23.03, Levels: 2, Branches: true}, {MaxLabels: 20}, {MinN: 40, MaxN: 90},
+	{},
+	{Branches: true},
+	{Levels: 3},
+	{Unit: true, Levels: 2},
+	{Unit: true},
+	{Components: 3},
+	{Spread: 23.03},
+	{Spread: 23.03, Levels: 2, Branches: true},
+	{MaxLabels: 20},
+	{MinN: 40, MaxN: 90},
 }
 
 // The least steepest slope any interpolation can have, by linear programming: SciPy 1.10.1's linprog, run once by

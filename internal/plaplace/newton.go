@@ -122,8 +122,8 @@ func (s *Solver) step(w *work, p, eps float64) float64 {
 			var sum float64
 			for e := lo; e < hi; e++ {
 				d := w.d[e] + float64(t*w.dx[e])
-				l := min(float64(p*(s.ea[e]-top))+float64((p-2)*(lnSize(d, eps2)))+2*top, 600)
-				sum += math.Exp(l) * d * w.dx[e]
+				l := min(float64(p*(s.ea[e]-top))+float64((p-2)*lnSize(d, eps2))+2*top, 600)
+				sum += float64(math.Exp(l) * d * w.dx[e])
 			}
 			return sum
 		})

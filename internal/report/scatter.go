@@ -158,7 +158,7 @@ func (p place) tags(d *drawing, class []int32, names []string) {
 	var taken []box
 	for c, name := range names {
 		text := short(name, 18)
-		half := 3.6 * float64(len([]rune(text)))
+		half := float64(3.6 * float64(len([]rune(text))))
 		best, at := 0, box{}
 		for cell, n := range cells[c] {
 			if n == 0 {
@@ -178,7 +178,7 @@ func (p place) tags(d *drawing, class []int32, names []string) {
 				}
 			}
 			score += 1000 // a class among others still gets its name
-			b := box{min(max(side*(float64(cx)+.5), half+3), float64(p.w)-half-3), side * (float64(cy) + .5), half}
+			b := box{min(max(side*(float64(cx)+.5), half+3), float64(p.w)-half-3), float64(side * (float64(cy) + .5)), half}
 			clear := !slices.ContainsFunc(taken, func(t box) bool { return math.Abs(t.x-b.x) < t.w+b.w+2 && math.Abs(t.y-b.y) < 14 })
 			if clear && score > best {
 				best, at = score, b
@@ -270,10 +270,10 @@ func (p place) doubtPanel(m *Map, task Task) *drawing {
 	default:
 		d.Legend = rampLegend("w", 0, 1, doubtRamp, percent)
 		for s := range d.Legend {
-			switch {
-			case s == doubtRamp-1:
+			switch s {
+			case doubtRamp - 1:
 				d.Legend[s].Text = "over " + percent(doubtEdges[s-1])
-			case s == 0:
+			case 0:
 				d.Legend[s].Text = "under " + percent(doubtEdges[0])
 			default:
 				d.Legend[s].Text = percent(doubtEdges[s-1]) + " to " + percent(doubtEdges[s])

@@ -111,8 +111,15 @@ func PrintedArms() []Problem {
 // HangingBranch hangs a branch without a label on a vertex of an equal chain: it takes the vertex's value.
 func HangingBranch(p float64) Problem {
 	edges := []Edge{
-		{0, 1, 0}, {1, 2, 0}, {2, 3, 0}, {3, 4, 0},
-		{2, 5, -1}, {5, 6, 2}, {5, 7, -3}, {6, 7, 0}, {3, 8, 1},
+		{0, 1, 0},
+		{1, 2, 0},
+		{2, 3, 0},
+		{3, 4, 0},
+		{2, 5, -1},
+		{5, 6, 2},
+		{5, 7, -3},
+		{6, 7, 0},
+		{3, 8, 1},
 	}
 	want := []float64{0, .25, .5, .75, 1, .5, .5, .5, .75}
 	fixed, values := hold(map[int]float64{0: 0, 4: 1})

@@ -125,7 +125,8 @@ func TestCellsFindTheNearest(t *testing.T) {
 			for j := range n {
 				var s float64
 				for a := range d {
-					s += math.Pow(c.x[i*d+a]-c.x[j*d+a], 2)
+					step := c.x[i*d+a] - c.x[j*d+a]
+					s += step * step
 				}
 				all = append(all, math.Sqrt(s))
 			}

@@ -29,7 +29,7 @@ func Spread(mean, square []float64) ([]float64, error) {
 func LeftOutSpread(schur mat.Symmetric, given []float64) ([]float64, error) {
 	l := len(given)
 	if schur.SymmetricDim() != l {
-		return nil, fmt.Errorf("Schur complement of %d labels for %d values", schur.SymmetricDim(), l)
+		return nil, fmt.Errorf("the Schur complement of %d labels for %d values", schur.SymmetricDim(), l)
 	}
 	v := make([]float64, l)
 	for i := range l {
