@@ -48,7 +48,7 @@ func ReadFeatures(ctx context.Context, t *table.Table, o FeatureOptions) (*Featu
 		f.Names = append(f.Names, t.Header(c))
 	}
 	warnings := numberWarnings(nums)
-	if nums.Missing == 0 {
+	if nums.Missing == 0 && o.Missing != MissingMedian { // medians are kept for rows to come
 		return f, warnings, nil
 	}
 	w, err := f.fillMissing(t, o)

@@ -37,6 +37,7 @@ type Model struct {
 	Energy   string          `json:"energy"` // slope or conductance
 	Classes  []string        `json:"classes,omitempty"`
 	Labelled []int32         `json:"labelled"`           // vertices that were held, increasing; empty with tethers
+	Bridged  []int32         `json:"bridged,omitempty"`  // vertices of components that were joined to a label, increasing
 	Trust    json.RawMessage `json:"trust,omitempty"`    // what the judge of confidence keeps
 	Settings json.RawMessage `json:"settings,omitempty"` // as in the run record
 
@@ -208,9 +209,11 @@ func (m *Model) validate() error {
 	if err := m.Width.Validate(); err != nil {
 		return err
 	}
-	for i, v := range m.Labelled {
-		if v < 0 || int(v) >= n || i > 0 && m.Labelled[i-1] >= v {
-			return fmt.Errorf("labelled vertices are out of order at %d", i)
+	for _, list := range [][]int32{m.Labelled, m.Bridged} {
+		for i, v := range list {
+			if v < 0 || int(v) >= n || i > 0 && list[i-1] >= v {
+				return fmt.Errorf("labelled or bridged vertices are out of order at %d", i)
+			}
 		}
 	}
 	for _, v := range m.Points.Data {

@@ -27,6 +27,10 @@ type ExtendOptions struct {
 func Extend(ctx context.Context, e *ExtendOptions) error {
 	r, ctx, cancel := start(ctx, e.Options)
 	defer cancel()
+	overModel := table.Outputs{Stdout: r.Stdout, Inputs: []string{e.ModelFile}}
+	if err := overModel.Check(r.Output, r.Timings); err != nil {
+		return err
+	}
 	w, err := r.openOutputs()
 	if err != nil {
 		return err
@@ -36,10 +40,7 @@ func Extend(ctx context.Context, e *ExtendOptions) error {
 	if err != nil {
 		return err
 	}
-	s, err := table.OpenStream(ctx, r.Table, r.Stdin, table.Options{
-		Delimiter: r.Delimiter, Decimal: r.Decimal, NA: r.NA, NoHeader: r.NoHeader,
-		MaxField: r.MaxField, MaxColumns: r.MaxColumns, Workers: r.Workers,
-	})
+	s, err := table.OpenStream(ctx, r.Table, r.Stdin, r.streamOptions())
 	if err != nil {
 		return err
 	}
@@ -56,7 +57,7 @@ func Extend(ctx context.Context, e *ExtendOptions) error {
 	}
 	x.report()
 	if x.stray != nil {
-		if err := r.stage(ctx, "recheck", func() error { return x.stray.solve(ctx, x) }); err != nil {
+		if err := r.stage(ctx, "recheck", func() error { return x.recheck(ctx) }); err != nil {
 			return err
 		}
 	}
@@ -66,17 +67,27 @@ func Extend(ctx context.Context, e *ExtendOptions) error {
 // extension is an extend under way.
 type extension struct {
 	*run
-	model  *extend.Extender
-	judge  *rowJudge
-	cols   []int // feature columns of the new table, in the model's order
-	labels int   // label column of the new table, or -1
-	rows   int
-	counts [5]int // rows by origin
-	stray  *recheck
+	model *extend.Extender
+	judge *rowJudge
+	cols  []int // feature columns of the new table, in the model's order
+	rows  int
+	stray *recheck
+	given map[int]givenLabel // labels that stand in the table, by row; nil in extend
+
+	counts    [5]int // rows by origin
+	byClass   []int  // rows by class, of those that are not empty
+	low, high float64
+}
+
+// givenLabel is a label that stands in the table.
+type givenLabel struct {
+	text  []byte
+	class int32
+	value float64
 }
 
 func (r *run) loadExtension(ctx context.Context, e *ExtendOptions) (*extension, error) {
-	x := &extension{run: r, labels: -1}
+	x := &extension{run: r}
 	return x, r.stage(ctx, "model", func() error {
 		m, err := readModel(e.ModelFile)
 		if err != nil {
@@ -85,8 +96,11 @@ func (r *run) loadExtension(ctx context.Context, e *ExtendOptions) (*extension, 
 		if x.model, err = extend.NewExtender(ctx, m, r.Workers); err != nil {
 			return err
 		}
-		if x.judge, err = newRowJudge(m, e); err != nil {
+		if x.judge, err = newRowJudge(x.model, e); err != nil {
 			return &fault.Error{Exit: fault.Input, File: e.ModelFile, Message: err.Error(), Err: err}
+		}
+		if e.Recheck > 0 && !canRecheck(m) {
+			return fault.Usagef("P09", "--recheck needs a model with labels held exactly and nearest neighbours, not --tether or --radius")
 		}
 		if e.Recheck > 0 {
 			x.stray = newRecheck(e.Recheck, r.Seed)
@@ -104,12 +118,7 @@ func (x *extension) findColumns(head *table.Table) error {
 		}
 		x.cols = append(x.cols, c)
 	}
-	for _, c := range []string{"pinfill_label", "pinfill_origin"} {
-		if _, there := head.ColumnIndex(c); there {
-			return &fault.Error{Exit: fault.Input, Code: "C14", File: x.Table, Name: c, Message: "the table already has this column", Hint: "remove the columns of an earlier run first"}
-		}
-	}
-	return nil
+	return refuseAdded(x.Table, head)
 }
 
 func nearHint(head *table.Table, name string) string {
@@ -137,14 +146,51 @@ func (x *extension) stream(ctx context.Context, s *table.Stream, out io.Writer) 
 			return err
 		}
 		x.rows += batch.Rows()
-		for _, o := range res.Origin {
-			x.counts[o]++
-		}
+		x.count(res)
 	}
 }
 
 func (x *extension) columnsOf(res *encode.Result) []table.Column {
-	return res.Columns(x.Scores)
+	cols := res.Columns(x.Scores)
+	if x.SpreadsheetSafe {
+		for i := range cols {
+			cols[i].Cell = spreadsheetSafe(cols[i].Cell)
+		}
+	}
+	return cols
+}
+
+// count adds a batch to the figures of the result.
+func (x *extension) count(res *encode.Result) {
+	if x.byClass == nil {
+		x.byClass, x.low, x.high = make([]int, len(res.Names)), math.Inf(1), math.Inf(-1)
+	}
+	for row, o := range res.Origin {
+		x.counts[o]++
+		switch {
+		case o == encode.Abstained || o == encode.OriginBlank:
+		case res.Task == encode.Classes:
+			x.byClass[res.Class[row]]++
+		default:
+			x.low, x.high = min(x.low, res.Value[row]), max(x.high, res.Value[row])
+		}
+	}
+}
+
+// figures are the result's figures for the record; the median would take all values at once and is left out.
+func (x *extension) figures() ResultFigures {
+	f := ResultFigures{
+		Given: x.counts[encode.Given], Inferred: x.counts[encode.Inferred], Bridged: x.counts[encode.Bridged],
+		Abstained: x.counts[encode.Abstained], Blank: x.counts[encode.OriginBlank],
+	}
+	for c, n := range x.byClass {
+		f.Classes = append(f.Classes, ClassCount{x.model.Classes[c], n})
+	}
+	if len(x.byClass) == 0 && x.low <= x.high {
+		lo, hi := Number(x.low), Number(x.high)
+		f.Low, f.High = &lo, &hi
+	}
+	return f
 }
 
 // batch labels the rows of one batch on all workers.
@@ -159,7 +205,7 @@ func (x *extension) batch(ctx context.Context, t *table.Table) (*encode.Result, 
 	const grain = 512
 	parallel.For(x.Workers, rows, grain, func(lo, hi int) {
 		work := x.model.NewWork()
-		scores := make([]float64, classes)
+		scores, prob := make([]float64, classes), make([]float64, classes)
 		for row := lo; row < hi; row++ {
 			features := nums.Data[row*len(x.cols) : (row+1)*len(x.cols)]
 			if missing := x.fill(features); missing {
@@ -175,16 +221,44 @@ func (x *extension) batch(ctx context.Context, t *table.Table) (*encode.Result, 
 				first(&failed, row)
 				continue
 			}
-			x.judge.row(res, row, scores, at)
+			x.judge.row(res, row, scores, at, prob)
 		}
 	})
 	if f := failed.Load(); f > 0 {
 		return nil, x.rowFault(t, int(f-1), nums)
 	}
+	if x.given != nil {
+		x.standing(res)
+	}
 	if x.stray != nil {
-		x.stray.take(x.rows, nums, res)
+		x.stray.take(nums, res)
 	}
 	return res, nil
+}
+
+// standing puts the labels that stand in the table in their rows.
+func (x *extension) standing(res *encode.Result) {
+	start := x.rows
+	res.GivenText = func(row int) []byte { return x.given[start+row].text }
+	nan := math.NaN()
+	for row := range res.Origin {
+		g, there := x.given[start+row]
+		if !there {
+			continue
+		}
+		res.Origin[row] = encode.Given
+		if res.Task == encode.Classes {
+			res.Class[row] = g.class
+			if res.Confidence != nil {
+				res.Confidence[row], res.Set[row] = nan, nil
+			}
+			continue
+		}
+		res.Value[row] = g.value
+		if res.Low != nil {
+			res.Low[row], res.High[row] = nan, nan
+		}
+	}
 }
 
 // fill puts the model's medians for missing features and reports whether one is still missing.
@@ -233,7 +307,17 @@ func (x *extension) report() {
 	if n := x.counts[encode.OriginBlank]; n > 0 {
 		x.note("%d rows blank", n)
 	}
-	if x.judge.novel.Load() > 0 {
-		x.warnf("", "%d rows lie farther from the model's rows than 99%% of these lie from each other; their labels rest on little", x.judge.novel.Load())
+	x.warnNovel()
+}
+
+// expectedNovel is the share of rows that lie farther from the model's than 99 of 100 of these lie from each other,
+// where new rows are like the model's; twice as many are worth a word.
+const expectedNovel = 0.01
+
+// warnNovel says when more rows than chance allows are unlike those that were solved.
+func (x *extension) warnNovel() {
+	n := int(x.judge.novel.Load())
+	if share := float64(n) / float64(x.rows); share > 2*expectedNovel {
+		x.warnf("", "%d rows (%.1f%%) lie farther from the solved rows than 99%% of these lie from each other; their labels rest on little", n, 100*share)
 	}
 }

@@ -34,6 +34,9 @@ func Label(ctx context.Context, o *Options) error {
 		return err
 	}
 	defer w.abort()
+	if r.SolveOn > 0 {
+		return r.labelOnFewer(ctx, w)
+	}
 	l, err := r.label(ctx)
 	if err != nil {
 		return err

@@ -53,6 +53,11 @@ func (r *run) newModel(l *labelled) (*extend.Model, error) {
 	if r.Tether == 0 {
 		m.Labelled = n.fixed
 	}
+	for v, bridged := range l.bridged {
+		if bridged {
+			m.Bridged = append(m.Bridged, int32(v))
+		}
+	}
 	return m, nil
 }
 

@@ -1,6 +1,7 @@
 package job
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"math"
@@ -8,7 +9,7 @@ import (
 
 	"pinfill/internal/choose"
 	"pinfill/internal/encode"
-	"pinfill/internal/fault"
+	"pinfill/internal/extend"
 	"pinfill/internal/graph"
 	"pinfill/internal/neighbors"
 	"pinfill/internal/points"
@@ -26,42 +27,39 @@ type recheck struct {
 // pick is a sampled row with what extension said of it.
 type pick struct {
 	rank     uint64
-	row      int
 	features []float64
 	class    int32
 	value    float64
 }
 
-func newRecheck(size int, seed uint64) *recheck { return &recheck{size: size, seed: seed} }
-
-// mix is a bijection that scatters (splitmix64, Steele, Lea and Flood 2014): a row's rank in the sample depends on the
-// seed and its number alone.
-func mix(x uint64) uint64 {
-	x += 0x9e3779b97f4a7c15
-	x = (x ^ x>>30) * 0xbf58476d1ce4e5b9
-	x = (x ^ x>>27) * 0x94d049bb133111eb
-	return x ^ x>>31
+// StrayFigure says how far extension strays from solving again.
+type StrayFigure struct {
+	Rows    int     `json:"rows"`
+	Changed *int    `json:"labels_changed,omitempty"` // classes
+	RMS     *Number `json:"rms_change,omitempty"`     // numbers
+	Largest *Number `json:"largest_change,omitempty"` // numbers
 }
 
-// take offers the rows of a batch, whose first row has number start.
-func (s *recheck) take(start int, nums *table.Numbers, res *encode.Result) {
+func newRecheck(size int, seed uint64) *recheck { return &recheck{size: size, seed: seed} }
+
+// take offers the rows of a batch. Equal rows are sampled once, and the order of rows does not matter.
+func (s *recheck) take(nums *table.Numbers, res *encode.Result) {
 	for row := range nums.Rows {
-		rank := mix(mix(s.seed) ^ uint64(start+row))
-		if res.Origin[row] == encode.OriginBlank || len(s.picks) == s.size && rank >= s.picks[len(s.picks)-1].rank {
+		features := nums.Data[row*nums.Cols : (row+1)*nums.Cols]
+		rank, whole := rankOf(s.seed, features)
+		if !whole || res.Origin[row] == encode.OriginBlank || len(s.picks) == s.size && rank >= s.picks[len(s.picks)-1].rank {
 			continue
 		}
-		p := pick{rank: rank, row: start + row, features: slices.Clone(nums.Data[row*nums.Cols : (row+1)*nums.Cols])}
+		at, twice := slices.BinarySearchFunc(s.picks, rank, func(q pick, r uint64) int { return cmp.Compare(q.rank, r) })
+		if twice {
+			continue
+		}
+		p := pick{rank: rank, features: slices.Clone(features)}
 		if res.Task == encode.Classes {
 			p.class = res.Class[row]
 		} else {
 			p.value = res.Value[row]
 		}
-		at, _ := slices.BinarySearchFunc(s.picks, rank, func(q pick, r uint64) int {
-			if q.rank < r {
-				return -1
-			}
-			return 1
-		})
 		s.picks = slices.Insert(s.picks, at, p)
 		if len(s.picks) > s.size {
 			s.picks = s.picks[:s.size]
@@ -69,22 +67,37 @@ func (s *recheck) take(start int, nums *table.Numbers, res *encode.Result) {
 	}
 }
 
-// solve puts the sampled rows into the model's graph, solves again and says how far extension strays.
-func (s *recheck) solve(ctx context.Context, x *extension) error {
-	m := x.model.Model
-	if len(m.Labelled) == 0 || m.K == 0 {
-		return fault.Usagef("P09", "--recheck needs a model with labels held exactly and nearest neighbours, not --tether or --radius")
+// canRecheck tells whether the model's graph and labels can be put together again.
+func canRecheck(m *extend.Model) bool { return len(m.Labelled) > 0 && m.K > 0 }
+
+// recheck solves again with the sampled rows and says how far extension strays.
+func (x *extension) recheck(ctx context.Context) error {
+	f, err := x.stray.measure(ctx, x)
+	if err != nil {
+		return err
 	}
+	if f == nil {
+		x.note("recheck: every sampled row lies on a row of the model")
+		return nil
+	}
+	x.note("%s", f.sentence("recheck", "new rows"))
+	return nil
+}
+
+// measure puts the sampled rows into the model's graph and solves again. It is nil where each lies on a vertex.
+func (s *recheck) measure(ctx context.Context, x *extension) (*StrayFigure, error) {
+	m := x.model.Model
 	all := &points.Matrix{N: m.Points.N, D: m.Points.D, Data: slices.Clone(m.Points.Data)}
 	seen := map[string]bool{}
 	var fresh []pick
+	work, scores := x.model.NewWork(), make([]float64, len(m.Scores))
 	for _, p := range s.picks {
 		y := make([]float64, m.Points.D)
 		if err := m.Scaling.Apply(y, p.features); err != nil {
 			continue
 		}
 		key := fmt.Sprint(y)
-		at, err := x.model.Row(p.features, make([]float64, len(m.Scores)), x.model.NewWork())
+		at, err := x.model.Row(p.features, scores, work)
 		if err != nil || at.Distance == 0 || seen[key] {
 			continue // on a vertex, or the same as another: nothing to learn
 		}
@@ -94,15 +107,13 @@ func (s *recheck) solve(ctx context.Context, x *extension) error {
 		all.N++
 	}
 	if len(fresh) == 0 {
-		x.note("recheck: every sampled row lies on a row of the model")
-		return nil
+		return nil, nil
 	}
 	fields, err := s.again(ctx, x, all)
 	if err != nil {
-		return err
+		return nil, err
 	}
-	x.note("%s", s.sentence(x, fresh, fields))
-	return nil
+	return s.figure(x, fresh, fields), nil
 }
 
 func (s *recheck) again(ctx context.Context, x *extension, all *points.Matrix) ([][]float64, error) {
@@ -137,25 +148,36 @@ func (s *recheck) again(ctx context.Context, x *extension, all *points.Matrix) (
 	return fields, err
 }
 
-// sentence says how far extension strays.
-func (s *recheck) sentence(x *extension, fresh []pick, fields [][]float64) string {
-	m := x.model.Model
-	changed, worst := 0, 0.0
-	var square float64
+// figure compares what extension said with the new solution.
+func (s *recheck) figure(x *extension, fresh []pick, fields [][]float64) *StrayFigure {
+	f := &StrayFigure{Rows: len(fresh)}
+	changed, worst, square := 0, 0.0, 0.0
+	scores := make([]float64, len(fields))
 	for i, p := range fresh {
-		v := m.Points.N + i
-		if len(m.Classes) > 0 {
-			if int32(x.judge.keep.Weights.Decide(func(c int) float64 { return fields[c][v] })) != p.class {
+		for c := range scores {
+			scores[c] = fields[c][x.model.Points.N+i]
+		}
+		if len(x.model.Classes) > 0 {
+			if x.judge.decide(scores) != p.class {
 				changed++
 			}
 			continue
 		}
-		d := math.Abs(fields[0][v] - p.value)
+		d := math.Abs(scores[0] - p.value)
 		worst = max(worst, d)
-		square += float64(d * d)
+		square += d * d
 	}
-	if len(m.Classes) > 0 {
-		return fmt.Sprintf("recheck: solving again with %d of the new rows changes the label of %d (%.1f%%)", len(fresh), changed, 100*float64(changed)/float64(len(fresh)))
+	if len(x.model.Classes) > 0 {
+		f.Changed = &changed
+	} else {
+		f.RMS, f.Largest = figure(math.Sqrt(square/float64(len(fresh)))), figure(worst)
 	}
-	return fmt.Sprintf("recheck: solving again with %d of the new rows moves their values by %.3g (root mean square), at most %.3g", len(fresh), math.Sqrt(square/float64(len(fresh))), worst)
+	return f
+}
+
+func (f *StrayFigure) sentence(what, rows string) string {
+	if f.Changed != nil {
+		return fmt.Sprintf("%s: solving again with %d of the %s changes the label of %d (%.1f%%)", what, f.Rows, rows, *f.Changed, 100*float64(*f.Changed)/float64(f.Rows))
+	}
+	return fmt.Sprintf("%s: solving again with %d of the %s moves their values by %.3g (root mean square), at most %.3g", what, f.Rows, rows, float64(*f.RMS), float64(*f.Largest))
 }

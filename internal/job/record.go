@@ -67,6 +67,7 @@ type Record struct {
 	Graph    GraphFigures      `json:"graph"`
 	Solves   []SolveFigures    `json:"solves"`
 	Trust    *TrustFigures     `json:"trust,omitempty"`
+	Fewer    *FewerFigures     `json:"solve_on,omitempty"`
 	Result   ResultFigures     `json:"result"`
 	Warnings []encode.Warning  `json:"warnings"`
 	Caution  string            `json:"caution"`

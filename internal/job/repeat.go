@@ -17,6 +17,9 @@ func Repeat(ctx context.Context, o *Options, rec *Record, path string) error {
 	if rec.Command != "label" {
 		return fault.Usagef("P09", "%s records pinfill %s; --repeat repeats label", fault.Name(path), rec.Command)
 	}
+	if o.SolveOn > 0 {
+		return fault.Usagef("P09", "%s records a run with --solve-on, which --repeat does not do; run its flags again: the same bytes come out", fault.Name(path))
+	}
 	r, ctx, cancel := start(ctx, o)
 	defer cancel()
 	w, err := r.openOutputs()

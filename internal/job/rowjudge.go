@@ -9,20 +9,32 @@ import (
 
 	"pinfill/internal/encode"
 	"pinfill/internal/extend"
+	"pinfill/internal/parallel"
 	"pinfill/internal/trust"
 )
 
 // rowJudge gives new rows the same confidence, sets and intervals as label gave the model's own.
 type rowJudge struct {
 	keep    kept
-	sure    bool // confidence, sets or intervals can be had
-	abstain float64
+	sure    bool         // confidence, sets or intervals can be had
+	least   float64      // rows less sure than this are left empty
+	bridged []bool       // by vertex; nil when none is
 	novel   atomic.Int64 // rows far from every vertex
 }
 
 // newRowJudge reads what the model keeps; --coverage and --drawn on the command line stand above it.
-func newRowJudge(m *extend.Model, e *ExtendOptions) (*rowJudge, error) {
-	j := &rowJudge{abstain: e.Abstain}
+func newRowJudge(x *extend.Extender, e *ExtendOptions) (*rowJudge, error) {
+	m := x.Model
+	j := &rowJudge{least: math.Inf(-1)}
+	if e.Abstain > 0 {
+		j.least = e.Abstain
+	}
+	if len(m.Bridged) > 0 {
+		j.bridged = make([]bool, m.Points.N)
+		for _, v := range m.Bridged {
+			j.bridged[v] = true
+		}
+	}
 	if err := json.Unmarshal(m.Trust, &j.keep); err != nil {
 		return nil, fmt.Errorf("the model's evidence cannot be read: %w", err)
 	}
@@ -42,8 +54,60 @@ func newRowJudge(m *extend.Model, e *ExtendOptions) (*rowJudge, error) {
 	if errors.Is(err, trust.ErrNoEvidence) {
 		return j, nil
 	}
-	j.sure = err == nil
+	if err != nil {
+		return j, err
+	}
+	j.sure = true
+	if e.AbstainRate > 0 {
+		j.least, err = j.leastSure(m, e.AbstainRate, e.Workers)
+	}
 	return j, err
+}
+
+// leastSure is the sureness below which a share of the model's own free vertices would be left empty. A stream cannot
+// rank its rows before it has seen them all, so new rows are held against those that were solved.
+func (j *rowJudge) leastSure(m *extend.Model, rate float64, workers int) (float64, error) {
+	sure := make([]float64, m.Points.N)
+	const grain = 2048
+	parallel.For(workers, len(sure), grain, func(lo, hi int) {
+		scores, prob := make([]float64, len(m.Scores)), make([]float64, len(m.Scores))
+		for v := lo; v < hi; v++ {
+			for c := range scores {
+				scores[c] = m.Scores[c][v]
+			}
+			var spread float64
+			if m.Spread != nil {
+				spread = m.Spread[v]
+			}
+			sure[v], _, _, _ = j.sureness(scores, spread, prob)
+		}
+	})
+	for _, v := range m.Labelled {
+		sure[v] = math.NaN()
+	}
+	marked, err := trust.Abstain(sure, math.Inf(-1), rate)
+	least := math.Inf(1)
+	for v, s := range sure {
+		if !marked[v] && s < least {
+			least = s
+		}
+	}
+	return least, err
+}
+
+// sureness is the confidence of a class, or minus the width of a number's interval, with the set or the interval.
+func (j *rowJudge) sureness(scores []float64, spread float64, prob []float64) (sure float64, set []int32, low, high float64) {
+	if j.keep.intervals != nil {
+		low, high = j.keep.intervals.At(scores[0], spread)
+		return low - high, nil, low, high
+	}
+	sure, set = j.keep.class(prob, func(c int) float64 { return scores[c] })
+	return sure, set, 0, 0
+}
+
+// decide gives the class of a row.
+func (j *rowJudge) decide(scores []float64) int32 {
+	return int32(j.keep.Weights.Decide(func(c int) float64 { return scores[c] }))
 }
 
 // newResult makes room for the rows of a batch.
@@ -89,8 +153,8 @@ func (j *rowJudge) blank(res *encode.Result, row int) {
 	}
 }
 
-// row judges one row; rows of different numbers may be judged at the same time.
-func (j *rowJudge) row(res *encode.Result, row int, scores []float64, at extend.Near) {
+// row judges one row; rows of different numbers may be judged at the same time. prob is scratch, one a class.
+func (j *rowJudge) row(res *encode.Result, row int, scores []float64, at extend.Near, prob []float64) {
 	if math.IsNaN(scores[0]) {
 		j.blank(res, row)
 		return
@@ -98,22 +162,27 @@ func (j *rowJudge) row(res *encode.Result, row int, scores []float64, at extend.
 	if at.Distance > j.keep.far {
 		j.novel.Add(1)
 	}
+	if j.bridged != nil && j.bridged[at.Vertex] {
+		res.Origin[row] = encode.Bridged
+	}
 	for c := range res.Scores {
 		res.Scores[c][row] = scores[c]
 	}
 	if res.Task == encode.Numbers {
 		res.Value[row] = scores[0]
-		if j.sure {
-			res.Low[row], res.High[row] = j.keep.intervals.At(scores[0], at.Spread)
-		}
-		return
+	} else {
+		res.Class[row] = j.decide(scores)
 	}
-	res.Class[row] = int32(j.keep.Weights.Decide(func(c int) float64 { return scores[c] }))
 	if !j.sure {
 		return
 	}
-	res.Confidence[row], res.Set[row] = j.keep.class(make([]float64, len(scores)), func(c int) float64 { return scores[c] })
-	if res.Confidence[row] < j.abstain {
+	sure, set, low, high := j.sureness(scores, at.Spread, prob)
+	if res.Task == encode.Numbers {
+		res.Low[row], res.High[row] = low, high
+	} else {
+		res.Confidence[row], res.Set[row] = sure, set
+	}
+	if sure < j.least {
 		res.Origin[row] = encode.Abstained
 	}
 }
