@@ -20,7 +20,7 @@ demo: build
 	bin/pinfill label demo/seabed.csv --label bottom --id cell --record demo/seabed.json --report demo/seabed.html -o demo/seabed_done.csv
 	bin/pinfill label demo/grain.csv --label grain_phi --id cell --record demo/grain.json --report demo/grain.html -o demo/grain_done.csv
 	bin/pinfill label demo/clips.csv --label state --id clip --record demo/clips.json --report demo/clips.html -o demo/clips_done.csv
-	bin/pinfill assess demo/seabed_done.csv --truth bottom_truth --truth-file demo/seabed_truth.csv --id cell
+	bin/pinfill assess demo/seabed_done.csv --truth bottom_truth --labels demo/seabed_truth.csv --id cell
 	@echo "the completed tables are demo/*_done.csv; each has its record (.json) and its report (.html, open in a browser)"
 
 test: build
@@ -34,3 +34,6 @@ check:
 	@out=$$($(GO) run $(FUMPT) -l cmd internal); if [ -n "$$out" ]; then echo "not formatted:"; echo "$$out"; exit 1; fi
 	$(GO) run $(LINT) run ./...
 	$(GO) mod tidy -diff
+
+docs:
+	$(GO) run ./internal/cli/gen docs

@@ -16,9 +16,9 @@ func (a *app) assessCommand() *cobra.Command {
 		Long: `Compares the labels of a completed table with checked rows: confusion matrix, user's, producer's and overall accuracy,
 kappa, and with --strata the stratified estimators with standard errors; RMSE, MAE and interval coverage for numbers.
 Rows whose label was given are left out of the figures. The truth stands in DONE, or in a second table (--labels).`,
-		Example: `  pinfill assess demo/seabed_done.csv --truth bottom --labels demo/seabed_truth.csv --id cell
-  pinfill assess demo/grain_done.csv --truth grain_phi --labels demo/grain_truth.csv --id cell
-  pinfill assess checked.csv --truth seen --strata pinfill_label --json`,
+		Example: `  pinfill assess seabed_done.csv --truth bottom_truth --labels demo/seabed_truth.csv --id cell
+  pinfill assess grain_done.csv --truth grain_phi_truth --labels demo/grain_truth.csv --id cell
+  pinfill assess clips_done.csv --truth state_truth --labels demo/clips_truth.csv --id clip --json`,
 		Args: exactArgs("DONE"),
 	}
 	f := a.newFlags(cmd)

@@ -13,12 +13,13 @@ func (a *app) extendCommand() *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "extend MODEL NEWTABLE -o OUT",
 		Short: "label new rows from a saved run",
-		Long: `Labels the rows of NEWTABLE from a run saved with label --model, without solving again: each new row takes the value that
-minimises its own part of the energy. NEWTABLE is streamed in constant memory, so it may be larger than memory; - reads
-standard input. Columns are found by name; others are passed through.`,
-		Example: `  pinfill extend seabed.model new_cells.csv -o new_done.csv
-  zcat new_cells.csv.gz | pinfill extend seabed.model - -o - | gzip > new_done.csv.gz
-  pinfill extend seabed.model new_cells.csv --recheck 200 -o new_done.csv`,
+		Long: `Labels the rows of NEWTABLE from a run saved with label --model, without solving again: each new row takes the
+value that minimises its own part of the energy. NEWTABLE is streamed in constant memory, so it may be larger than
+memory; - reads standard input. Columns are found by name; others are passed through.`,
+		Example: `  pinfill label demo/seabed.csv --label bottom --id cell --model seabed.model -o seabed_done.csv
+  pinfill extend seabed.model demo/grain.csv --id cell -o grain_bottom.csv
+  pinfill extend seabed.model demo/grain.csv --recheck 200 -o grain_bottom.csv
+  gzip -c demo/grain.csv | pinfill extend seabed.model - -o - | gzip > grain_bottom.csv.gz`,
 		Args: exactArgs("MODEL", "NEWTABLE"),
 	}
 	f := a.newFlags(cmd)

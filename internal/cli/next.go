@@ -17,7 +17,7 @@ func (a *app) nextCommand() *cobra.Command {
 and the reason in words. Labels chosen this way are no random sample: pass --drawn chosen when you use them.`,
 		Example: `  pinfill next demo/seabed.csv --label bottom --id cell --count 12 -o visit.csv
   pinfill next demo/clips.csv --label state --id clip --count 5 -o -
-  pinfill next demo/grain.csv --label grain_phi --id cell --count 8 --exclude visited.csv -o visit.csv`,
+  pinfill next demo/seabed.csv --label bottom --id cell --count 12 --exclude visit.csv -o visit_2.csv`,
 		Args: exactArgs("TABLE"),
 	}
 	f := a.newFlags(cmd)
