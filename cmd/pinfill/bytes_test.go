@@ -5,7 +5,6 @@ import (
 	"fmt"
 	"math"
 	"os"
-	"os/exec"
 	"path/filepath"
 	"slices"
 	"strconv"
@@ -101,37 +100,5 @@ func TestColumnsPermuted(t *testing.T) {
 		if d := math.Abs(got - want[id]); d > 1e-9 {
 			t.Errorf("row %s moved by %v", id, d)
 		}
-	}
-}
-
-// TestInstructionSets: products and sums are not fused, so that code for a newer processor gives the same bytes on the
-// same machine.
-func TestInstructionSets(t *testing.T) {
-	if testing.Short() {
-		t.Skip("builds a second binary")
-	}
-	cpu, err := os.ReadFile("/proc/cpuinfo")
-	if err != nil || !strings.Contains(string(cpu), "avx2") || !strings.Contains(string(cpu), " fma ") {
-		t.Skip("this machine does not run GOAMD64=v3")
-	}
-	dir := t.TempDir()
-	sheet(t, dir, 240, 0)
-	if code, msg := runBinary(t, dir, nil, scored...); code != 0 {
-		t.Fatal(msg)
-	}
-	want := read(t, dir, "out.csv")
-	v3 := filepath.Join(dir, "v3")
-	build := exec.Command("go", "build", "-o", v3, ".")
-	build.Env = append(os.Environ(), "CGO_ENABLED=0", "GOAMD64=v3")
-	if out, err := build.CombinedOutput(); err != nil {
-		t.Fatalf("%v: %s", err, out)
-	}
-	run := exec.Command(v3, scored...)
-	run.Dir = dir
-	if out, err := run.CombinedOutput(); err != nil {
-		t.Fatalf("%v: %s", err, out)
-	}
-	if read(t, dir, "out.csv") != want {
-		t.Error("GOAMD64=v3 gives other bytes")
 	}
 }

@@ -61,7 +61,7 @@ func midrange(logW, f []float64, top float64) float64 {
 				continue // beyond the range of float64 beside the nearest neighbour: an infinite length
 			}
 			if s := rise / (1/wi + 1/wj); s > best {
-				best, value = s, f[i]+rise*(wj/(wi+wj))
+				best, value = s, f[i]+float64(rise*(wj/(wi+wj)))
 			}
 		}
 	}
@@ -90,7 +90,7 @@ func root(logW, f []float64, p, top, lo, hi float64) float64 {
 		weight += c[j]
 	}
 	s := star{logW: logW, top: top, p: p, r: p - 1, g: g, c: c}
-	return lo + (hi-lo)*s.solve(start/weight)
+	return lo + float64((hi-lo)*s.solve(start/weight))
 }
 
 // star is a vertex with neighbours at g, from 0 to 1, both ends taken.
@@ -129,7 +129,7 @@ func (s *star) solve(u float64) float64 {
 		}
 		next := u - h/(float64(a*below.slope)+float64(b*above.slope))
 		if !(next > lo && next < hi) || step >= steady && step%3 == 0 {
-			next = lo + (hi-lo)/2
+			next = lo + float64((hi-lo)/2)
 		} else if math.Abs(next-u) <= 1e-9*near {
 			return next // Newton squares the error: what is left is below the last digit
 		}
@@ -183,7 +183,7 @@ func power(d, r float64) float64 {
 // pullLog is pull for one side in logarithms, for powers and weights beyond the range of float64.
 func (s *star) pullLog(u, sign float64) side {
 	big := math.Inf(-1)
-	log := func(j int, d float64) float64 { return math.Log(d) + (s.logW[j]-s.top)*(s.p/s.r) }
+	log := func(j int, d float64) float64 { return math.Log(d) + float64((s.logW[j]-s.top)*(s.p/s.r)) }
 	for j, g := range s.g {
 		if d := sign * (u - g); d > 0 {
 			big = max(big, log(j, d))
