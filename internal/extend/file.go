@@ -41,7 +41,7 @@ const (
 // WriteTo writes the model: a zip container with model.json and the arrays, uncompressed, without clock times, so that
 // the same model gives the same bytes.
 func (m *Model) WriteTo(w io.Writer) (int64, error) {
-	m.Program, m.Format, m.Rows, m.Dims, m.PText = "pinfill", Format, m.Points.N, m.Points.D, pText(m.P)
+	m.describe()
 	arrays := []struct {
 		name string
 		data []byte
@@ -72,6 +72,11 @@ func (m *Model) WriteTo(w io.Writer) (int64, error) {
 	}
 	err = z.Close()
 	return count.n, err
+}
+
+// describe sets the plain fields that follow from the others.
+func (m *Model) describe() {
+	m.Program, m.Format, m.Rows, m.Dims, m.PText = "pinfill", Format, m.Points.N, m.Points.D, pText(m.P)
 }
 
 // store adds one uncompressed entry whose sizes stand in its own header, so that the file can be mapped.

@@ -59,6 +59,7 @@ type Extender struct {
 
 // NewExtender builds the search index of a model.
 func NewExtender(ctx context.Context, m *Model, workers int) (*Extender, error) {
+	m.describe()
 	kernel, err := graph.ParseKernel(m.Kernel)
 	if err != nil {
 		return nil, err
