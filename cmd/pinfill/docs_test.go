@@ -6,6 +6,7 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -159,4 +160,65 @@ func TestDocsMatch(t *testing.T) {
 			t.Errorf("%q against %q: not %v", c.want, c.got, c.ok)
 		}
 	}
+}
+
+var (
+	link    = regexp.MustCompile(`\]\(([^)\s]+)\)`)
+	goFile  = regexp.MustCompile("`((?:[a-z0-9]+/)+[a-z0-9_]+\\.go)`")
+	heading = regexp.MustCompile(`(?m)^#+ (.*)$`)
+	notSlug = regexp.MustCompile(`[^a-z0-9 _-]`)
+)
+
+// Links between the documents lead to files and headings that are there, and so do the source files they name.
+func TestDocsLinks(t *testing.T) {
+	root := filepath.Join("..", "..")
+	names, err := filepath.Glob(filepath.Join(root, "docs", "*.md"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	names = append(names, filepath.Join(root, "README.md"), filepath.Join(root, "DEVELOPERS.md"))
+	for _, name := range names {
+		text, err := os.ReadFile(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, m := range link.FindAllStringSubmatch(string(text), -1) {
+			file, anchor, _ := strings.Cut(m[1], "#")
+			if strings.Contains(file, "://") {
+				continue
+			}
+			to := name
+			if file != "" {
+				to = filepath.Join(filepath.Dir(name), file)
+			}
+			there, err := os.ReadFile(to)
+			if info, e := os.Stat(to); e == nil && info.IsDir() {
+				continue
+			}
+			if err != nil {
+				t.Errorf("%s: link to %s: %v", name, m[1], err)
+				continue
+			}
+			if anchor != "" && !slices.Contains(anchors(string(there)), anchor) {
+				t.Errorf("%s: no heading for %s", name, m[1])
+			}
+		}
+		for _, m := range goFile.FindAllStringSubmatch(string(text), -1) {
+			if _, err := os.Stat(filepath.Join(root, m[1])); err == nil {
+				continue
+			}
+			if _, err := os.Stat(filepath.Join(root, "internal", m[1])); err != nil {
+				t.Errorf("%s names %s, which is not there", name, m[1])
+			}
+		}
+	}
+}
+
+// anchors are the headings of a document as links name them.
+func anchors(text string) []string {
+	var out []string
+	for _, m := range heading.FindAllStringSubmatch(text, -1) {
+		out = append(out, strings.ReplaceAll(notSlug.ReplaceAllString(strings.ToLower(m[1]), ""), " ", "-"))
+	}
+	return out
 }
