@@ -23,7 +23,7 @@ type app struct {
 func newApp(s streams) *app {
 	a := &app{streams: s, flags: map[*cobra.Command]*flags{}}
 	a.root = &cobra.Command{
-		Use:   "pinfill",
+		Use:   "pinfill COMMAND",
 		Short: "finish a partly labelled table",
 		Long: `pinfill finishes a partly labelled table: it reads rows with feature columns and a few labels from CSV, builds a
 kernel-weighted neighbour graph, solves the p-Laplacian interpolation problem on it, and writes every row's label with
