@@ -71,7 +71,7 @@ func FuzzJoin(f *testing.F) {
 				t.Fatalf("%q joined to %q labels rows %v, not %v", labels, ids, got.Rows, want)
 			}
 			for k, row := range got.Rows {
-				if string(got.Text[k]) != want[row] || got.Names[got.Class[k]] != strings.TrimSpace(want[row]) {
+				if string(got.Text[k]) != want[row] || got.Names[got.Class[k]] != want[row] {
 					t.Fatalf("%q joined to %q: row %d has %q, class %q", labels, ids, row, got.Text[k], got.Names[got.Class[k]])
 				}
 			}

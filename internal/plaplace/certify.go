@@ -11,8 +11,9 @@ import (
 //
 // Gap: the flux of x, z_e = w^(p-1) |d|^(p-1) sign d, has divergence F_i at free i. For the minimiser u, with
 // b = (values at fixed vertices), Hölder's inequality gives ||w D u||_p >= (z . w D u) / ||z||_q, and
-// z . w D u = ||r(x)||_p^p - sum_i F_i (x_i - u_i) >= ||r||_p^p - sum_i |F_i| because both lie in [0, 1]; and
-// ||z||_q = ||r||_p^(p-1). So (primal - dual) / primal, to the power 1/p, is at most sum |F_i| / ||r||_p^p.
+// z . w D u = ||r(x)||_p^p - sum_i F_i (x_i - u_i) >= ||r||_p^p - sum_i |F_i| m_i with m_i >= |x_i - u_i|: the reach of
+// the enclosure, or 1 without one because both lie in [0, 1]; and ||z||_q = ||r||_p^(p-1). So (primal - dual) / primal,
+// to the power 1/p, is at most sum |F_i| m_i / ||r||_p^p.
 func (s *Solver) certificate(x point, values []float64, c enclosure, ok bool) Certificate {
 	cert := Certificate{Width: math.NaN()}
 	if ok {
@@ -24,7 +25,13 @@ func (s *Solver) certificate(x point, values []float64, c enclosure, ok bool) Ce
 		}
 		cert.Width = float64(cert.Width*(1+8*unit)) + 2*unit
 	}
-	cert.Gap, cert.Imbalance = s.balance(x)
+	reach := func(v int) float64 {
+		if !ok {
+			return 1
+		}
+		return min(1, max(math.Abs(x.h[v]-c.lower[v]), math.Abs(c.upper[v]-x.h[v])))
+	}
+	cert.Gap, cert.Imbalance = s.balance(x, reach)
 	return cert
 }
 
@@ -55,9 +62,10 @@ func (s *Solver) Certify(ctx context.Context, values []float64, tolerance float6
 	return s.certificate(x, values, c, ok), nil
 }
 
-// balance gives Certificate.Gap and Certificate.Imbalance of a point. Fluxes are taken over those of the steepest
-// edge, so that the powers neither overflow nor, where they matter, vanish.
-func (s *Solver) balance(x point) (gap, imbalance float64) {
+// balance gives Certificate.Gap and Certificate.Imbalance of a point, no vertex of which is farther than reach from the
+// minimiser. Fluxes are taken over those of the steepest edge, so that the powers neither overflow nor, where they
+// matter, vanish.
+func (s *Solver) balance(x point, reach func(v int) float64) (gap, imbalance float64) {
 	slope := func(a, d float64) float64 { return a + math.Log(math.Abs(d)) }
 	top := parallel.Max(s.workers, len(s.ea), edgeChunk, func(lo, hi int) float64 {
 		m := math.Inf(-1)
@@ -84,7 +92,7 @@ func (s *Solver) balance(x point) (gap, imbalance float64) {
 			if r.step > imbalanceFloor && r.sum > 0 {
 				worst[chunk] = max(worst[chunk], math.Abs(r.net)/r.sum)
 			}
-			flow[chunk] += math.Abs(r.net) * math.Exp(r.top-(s.p-1)*top)
+			flow[chunk] += float64(math.Abs(r.net) * math.Exp(r.top-float64((s.p-1)*top)) * reach(v))
 		}
 	})
 	var total float64
