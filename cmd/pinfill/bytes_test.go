@@ -2,13 +2,16 @@ package main
 
 import (
 	"encoding/csv"
+	"encoding/json"
 	"fmt"
 	"math"
 	"os"
+	"os/exec"
 	"path/filepath"
 	"slices"
 	"strconv"
 	"strings"
+	"syscall"
 	"testing"
 )
 
@@ -100,5 +103,36 @@ func TestColumnsPermuted(t *testing.T) {
 		if d := math.Abs(got - want[id]); d > 1e-9 {
 			t.Errorf("row %s moved by %v", id, d)
 		}
+	}
+}
+
+// TestMemoryEstimate holds the peak to 1.3 times the estimate that the record announces.
+func TestMemoryEstimate(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a few seconds")
+	}
+	dir := t.TempDir()
+	sheet(t, dir, 40000, 0)
+	cmd := exec.Command(binary(t), "label", "t.csv", "--label", "kind", "--id", "id", "--p", "2", "--quiet", "-o", "out.csv", "--record", "r.json")
+	cmd.Dir = dir
+	if out, err := cmd.CombinedOutput(); err != nil {
+		t.Fatalf("%v: %s", err, out)
+	}
+	var rec struct {
+		Table struct {
+			Memory int64 `json:"memory_estimate_bytes"`
+		}
+	}
+	if err := json.Unmarshal([]byte(read(t, dir, "r.json")), &rec); err != nil {
+		t.Fatal(err)
+	}
+	usage, ok := cmd.ProcessState.SysUsage().(*syscall.Rusage)
+	if !ok {
+		t.Skip("no resource usage here")
+	}
+	peak := usage.Maxrss * 1024 // kB on Linux
+	t.Logf("peak %d, estimate %d", peak, rec.Table.Memory)
+	if rec.Table.Memory == 0 || float64(peak) > 1.3*float64(rec.Table.Memory) {
+		t.Errorf("peak of %d bytes, estimate %d", peak, rec.Table.Memory)
 	}
 }

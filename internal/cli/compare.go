@@ -50,6 +50,9 @@ is marked. A sweep can be split with --part and joined with --join; the joined b
 				part != fmt.Sprintf("%d/%d", c.Part, c.Parts) {
 				return fault.Usagef("P09", "flag --part: value %s: I/N with 1 <= I <= N, like 2/8", fault.Quote(part))
 			}
+			if o.Report != "" {
+				return fault.Usagef("P09", "--part has no report of its own: give --report with --join")
+			}
 			if len(join) > 0 {
 				return fault.Usagef("P09", "--part and --join exclude each other")
 			}

@@ -43,6 +43,7 @@ func (r *run) fillRecord(l *labelled) {
 
 func (rec *Record) tableFigures(d *data, v *vertices) {
 	t := &rec.Table
+	t.Memory = d.memory
 	t.Vertices, t.Labelled, t.Task = v.n, len(d.labels.Rows), string(d.labels.Task)
 	if d.features != nil {
 		t.Features = d.features.Names

@@ -19,6 +19,7 @@ type data struct {
 	features    *encode.Features // nil when the graph is given
 	group       []string         // group of each labelled row, or nil
 	inputs      []FileSum
+	memory      int64 // estimated peak, bytes; 0 for a given graph
 }
 
 // readTable reads one input and notes its checksum.

@@ -48,7 +48,8 @@ func (r *run) findNetwork(ctx context.Context, d *data) (*network, error) {
 		if err != nil {
 			return err
 		}
-		if err := r.needMemory(int64(v.n)*int64(60*k+120)+d.table.Bytes(), fmt.Sprintf("the graph of %d rows", v.n)); err != nil {
+		d.memory = estimateMemory(v.n, k) + d.table.Bytes()
+		if err := r.needMemory(d.memory, fmt.Sprintf("solving on %d rows with %d neighbours", v.n, k)); err != nil {
 			return err
 		}
 		n.lists, n.search, err = neighbors.KNearest(ctx, v.space.Points, k, o)

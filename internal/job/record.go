@@ -92,6 +92,7 @@ type TableFigures struct {
 	Columns  int          `json:"columns"`
 	Vertices int          `json:"vertices"` // distinct points
 	Labelled int          `json:"labelled"`
+	Memory   int64        `json:"memory_estimate_bytes,omitempty"`
 	Task     string       `json:"task"`
 	Features []string     `json:"features,omitempty"`
 	Dropped  []string     `json:"constant_columns,omitempty"`
