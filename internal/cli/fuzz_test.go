@@ -166,15 +166,18 @@ func begins(t *testing.T, in, out string) {
 	}
 }
 
-// records splits at the line ends outside quotes; each keeps its line end.
+// records splits at the line ends outside quotes; each keeps its line end. A quote within a bare cell quotes nothing.
 func records(text string) []string {
 	var out []string
 	start, quoted := 0, false
-	for i, b := range []byte(text) {
-		switch {
+	for i := range len(text) {
+		switch b := text[i]; {
+		case quoted:
+			quoted = b != '"'
 		case b == '"':
-			quoted = !quoted
-		case b == '\n' && !quoted:
+			// The first of a cell opens it; one after a closing quote is the second of a pair.
+			quoted = i == start || text[i-1] == ',' || text[i-1] == '"' && i-1 > start && opens(text[start:i])
+		case b == '\n':
 			out = append(out, text[start:i+1])
 			start = i + 1
 		}
@@ -183,6 +186,29 @@ func records(text string) []string {
 		out = append(out, text[start:])
 	}
 	return out
+}
+
+// opens reports whether the last cell of a record so far is a quoted one.
+func opens(record string) bool {
+	for len(record) > 0 {
+		if record[0] != '"' {
+			i := strings.IndexByte(record, ',')
+			if i < 0 {
+				return false
+			}
+			record = record[i+1:]
+			continue
+		}
+		end := 1
+		for end < len(record) && (record[end] != ',' || strings.Count(record[:end], `"`)%2 == 1) {
+			end++
+		}
+		if end >= len(record) {
+			return true
+		}
+		record = record[end+1:]
+	}
+	return false
 }
 
 func body(record string) (text, end string) {

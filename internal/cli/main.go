@@ -48,6 +48,9 @@ func run(args []string, s streams) (code int) {
 	warnClosedOutput(s.err)
 
 	a := newApp(s)
+	if err := a.unknownCommand(args); err != nil {
+		return a.report(ctx, err)
+	}
 	a.root.SetArgs(args)
 	err := a.root.ExecuteContext(ctx)
 	return a.report(ctx, errors.Join(err, a.helpFailed))

@@ -3,6 +3,7 @@ package cli
 import (
 	"fmt"
 	"runtime/debug"
+	"slices"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -47,13 +48,19 @@ how far to trust it. Settings that are not given are chosen from the table; ever
 		a.auditCommand(), a.nextCommand(), a.extendCommand(), a.assessCommand(), a.graphCommand(), a.demoCommand(), a.versionCommand(),
 	)
 	a.root.SetHelpFunc(a.help)
-	a.root.Args = func(_ *cobra.Command, args []string) error {
-		if len(args) > 0 {
-			return fault.Usagef("P09", "unknown command %s%s", fault.Quote(args[0]), nearest(args[0], a.commandNames()))
-		}
+	return a
+}
+
+// unknownCommand refuses a first word that is no command, before its flags are looked at.
+func (a *app) unknownCommand(args []string) error {
+	if len(args) == 0 || strings.HasPrefix(args[0], "-") {
 		return nil
 	}
-	return a
+	names := append(a.commandNames(), "help", "completion", cobra.ShellCompRequestCmd, cobra.ShellCompNoDescRequestCmd)
+	if slices.Contains(names, args[0]) {
+		return nil
+	}
+	return fault.Usagef("P09", "unknown command %s%s", fault.Quote(args[0]), nearest(args[0], a.commandNames()))
 }
 
 func (a *app) commandNames() []string {
