@@ -133,7 +133,8 @@ func (s *star) solve(u float64) float64 {
 		} else if math.Abs(next-u) <= 1e-9*near {
 			return next // Newton squares the error: what is left is below the last digit
 		}
-		if next == u || next <= lo || next >= hi {
+		const nothing = 0x1p-60 // of the range of the neighbours' values
+		if next == u || next <= lo || next >= hi || hi < nothing {
 			return u
 		}
 		u = next
