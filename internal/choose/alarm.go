@@ -5,12 +5,11 @@ import (
 	"math"
 )
 
-// Alarms. The study (docs/choosing-p.md) sets spikiness against loss: up to spikeAlarm a solution is seldom more than
-// a tenth worse than the best p, above it most are. A bulk below bulkAlarm leaves the order of the scores to differences
-// that hardly rise above the labels' own spikes. A class whose share of the decisions is less than a fifth of its share
+// Alarms. Spikiness raises none by itself: set against loss (docs/choosing-p.md) it does not tell a p that could be
+// bettered from a table on which no p does better. A bulk below bulkAlarm leaves the order of the scores to differences
+// that hardly rise above the labels' own spikes; the figure is a choice, not a finding. A class whose share of the decisions is less than a fifth of its share
 // of the labels, or more than five times, is worth a look whatever the reason.
 const (
-	spikeAlarm = 0.5
 	bulkAlarm  = 0.1
 	shareAlarm = 5
 )
@@ -18,9 +17,6 @@ const (
 // alarms says what in a chosen setting a user should know and what to change.
 func (s *Score) alarms(l Labels) []string {
 	var out []string
-	if l.Task == Numbers && s.Spike > spikeAlarm {
-		out = append(out, fmt.Sprintf("the labels stand out as spikes (spikiness %.2f, above %.1f): a larger p, fewer neighbours or more labels would carry them farther", s.Spike, spikeAlarm))
-	}
 	if l.Task == Numbers && s.Bulk < bulkAlarm {
 		out = append(out, fmt.Sprintf("the answers span only %.0f%% of the labels' range: they are near one value, and hardly depend on the features; a larger p or more labels would help", 100*s.Bulk))
 	}

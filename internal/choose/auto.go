@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"pinfill/internal/solve"
 	"pinfill/internal/sparse"
@@ -79,6 +80,7 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 	t := trial{energy: o.Energy, labels: l, fold: fold, solve: solve.Settings{Tolerance: o.Tolerance, Workers: o.Workers}, measure: true}
 	var first error
 	single := false // the table is too large for more than one setting
+	even := false   // the rows lie without gaps
 	for i := 0; i < len(all); i++ {
 		s := all[i]
 		if t.fold == nil && !o.Scores && len(d.Scores) > 0 && d.Scores[0].Certified {
@@ -105,6 +107,17 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 				t.fold = nil
 			}
 		}
+		if i == 0 && !single && l.Task == Classes && len(a.P) == 0 {
+			c, err := contrast(ctx, source, s)
+			if err != nil {
+				return nil, err
+			}
+			if c < evenBelow {
+				even = true
+				all = evenly(all)
+				s = all[0]
+			}
+		}
 		if t.fold != nil {
 			t.fold = FoldsOf(l, Folds(t.graph, len(l.Target)), o.Seed)
 		}
@@ -127,8 +140,32 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 	if len(d.Scores) == 0 {
 		return nil, first
 	}
-	d.settle(l, all, t.fold != nil && !single, fixed, why)
+	d.settle(l, all, t.fold != nil && !single, fixed, even, why)
 	return d, nil
+}
+
+// evenly puts p = 2 first, and takes mass normalisation for the balance that looks for gaps: where rows lie evenly there
+// are none for a boundary to follow.
+func evenly(all []Setting) []Setting {
+	some := slices.Clone(all)
+	slices.SortStableFunc(some, func(s, t Setting) int {
+		two := func(s Setting) int {
+			if s.P == 2 {
+				return 0
+			}
+			return 1
+		}
+		if !s.sameGraph(t) {
+			return 0
+		}
+		return two(s) - two(t)
+	})
+	for i := range some {
+		if some[i].Balance.Mode == AutoBalance {
+			some[i].Balance.Mode = FromLabels
+		}
+	}
+	return some
 }
 
 // withP keeps the settings at one p; with none there, all of them.
@@ -183,10 +220,18 @@ func speaking(l Labels) (bool, string) {
 // one at the default p, or the first certified. Another is better where its left-out loss is lower by more than the
 // noise of the paired difference allows. Scores without left-out losses only fall back.
 func Advise(scores []*Score, task Task) (best, first int) {
-	first = -1
-	def, margin := float64(DefaultClassP), float64(classMargin)
 	if task == Numbers {
-		def, margin = DefaultNumberP, numberMargin
+		return advise(scores, task, DefaultNumberP)
+	}
+	return advise(scores, task, DefaultClassP)
+}
+
+// advise is Advise with the p to measure against.
+func advise(scores []*Score, task Task, def float64) (best, first int) {
+	first = -1
+	margin := float64(classMargin)
+	if task == Numbers {
+		margin = numberMargin
 	}
 	for i, s := range scores {
 		if s.Certified && (first < 0 || s.P == def && scores[first].P != def) {
@@ -209,13 +254,17 @@ func Advise(scores []*Score, task Task) (best, first int) {
 }
 
 // settle picks among the scores.
-func (d *Decision) settle(l Labels, all []Setting, compared, fixed bool, why string) {
-	best, first := Advise(d.Scores, l.Task)
+func (d *Decision) settle(l Labels, all []Setting, compared, fixed, even bool, why string) {
+	best, first := advise(d.Scores, l.Task, d.Scores[0].P)
 	skipped := first != 0
 	c := d.Scores[best]
 	c.Advised = true
 	d.Setting, d.Chosen = c.Setting, c
 	name := c.describe(all)
+	kind := taskText(l.Task)
+	if even {
+		kind += " on rows that lie without gaps"
+	}
 	unit := "left-out error"
 	if l.Task == Numbers {
 		unit = "left-out RMSE"
@@ -228,9 +277,9 @@ func (d *Decision) settle(l Labels, all []Setting, compared, fixed bool, why str
 			name, unit, c.Error, d.Scores[first].Error, d.Scores[first].describe(all), c.LeftOut)
 	case compared:
 		d.Reason = fmt.Sprintf("%s: the default for %s; no other setting tried has a %s better than %.3g by more than the noise of %d labels",
-			name, taskText(l.Task), unit, c.Error, c.LeftOut)
+			name, kind, unit, c.Error, c.LeftOut)
 	default:
-		d.Reason = fmt.Sprintf("%s: the default for %s; %s", name, taskText(l.Task), why)
+		d.Reason = fmt.Sprintf("%s: the default for %s; %s", name, kind, why)
 	}
 	if skipped && !fixed && d.Scores[0] != c {
 		d.Warnings = append(d.Warnings, fmt.Sprintf("%s could not be certified on this graph and was passed over", d.Scores[0].describe(all)))

@@ -108,7 +108,7 @@ func TestAutoFewLabelsSaysSo(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if d.P != DefaultClassP || len(d.Scores) != 1 || !strings.Contains(d.Reason, "too few to leave some out") {
+	if d.P != 2 || len(d.Scores) != 1 || !strings.Contains(d.Reason, "too few to leave some out") {
 		t.Errorf("p %v of %d tried: %s", d.P, len(d.Scores), d.Reason)
 	}
 	l = label(r, v, 12, 2)
@@ -199,5 +199,25 @@ func TestSweepAgreesWithSolving(t *testing.T) {
 				t.Errorf("agreement of %d and %d: %v", i, j, a)
 			}
 		}
+	}
+}
+
+// A square has no gaps, two clusters have: the contrast tells them apart, and with it the first candidate.
+func TestContrastTellsGaps(t *testing.T) {
+	r := rand.New(rand.NewPCG(87, 5))
+	source, v := sheet(t, r, 400, func(x, _ float64) float64 { return math.Floor(2 * x) })
+	even, err := contrast(context.Background(), source, Setting{Neighbors: 10})
+	if err != nil || !(even > .8 && even < evenBelow) {
+		t.Errorf("square: contrast %v, %v", even, err)
+	}
+	d, err := Auto(context.Background(), source, label(r, v, 8, 2), Asked{}, Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if d.Scores[0].P != 2 || d.Balance.Mode != FromLabels || !strings.Contains(d.Reason, "without gaps") {
+		t.Errorf("square: p %v, balance %v: %s", d.P, d.Balance.Mode, d.Reason)
+	}
+	if c := contrastOf(network(3, []edge{{0, 1, 1}, {1, 2, 1}})); !math.IsNaN(c) {
+		t.Errorf("too few neighbours: contrast %v", c)
 	}
 }

@@ -6,6 +6,7 @@ import (
 	"io"
 	"math"
 	"os"
+	"slices"
 
 	"pinfill/internal/choose"
 	"pinfill/internal/graph"
@@ -27,7 +28,7 @@ type classDraw struct {
 	fixed      []float64 // by classPs, default balance
 	none, mass []float64 // by classPs[:3]: other balances
 	rule       float64
-	ruleP      float64
+	moved      bool    // off the first candidate
 	cost       float64 // linear solves of the rule over those of the setting it chose
 	missed     int     // solves not certified
 }
@@ -75,45 +76,53 @@ func studyClasses(ctx context.Context, tables []*table, draws, large int) (*clas
 func (s *space) classDraw(ctx context.Context, rate int, draw uint64) (classDraw, error) {
 	var d classDraw
 	l := s.perClass(rate, draw)
-	g, err := s.network(ctx, 10, plain, l)
+	g, err := s.network(ctx, 10, plain, l, graph.Gaussian)
 	if err != nil {
 		return d, err
 	}
 	if d.yard, err = s.yardstick(ctx, g, l); err != nil {
 		return d, err
 	}
-	if g, err = s.network(ctx, choose.DefaultNeighbors, local, l); err != nil {
+	if g, err = s.network(ctx, choose.DefaultNeighbors, local, l, graph.Gaussian); err != nil {
 		return d, err
 	}
-	source := func(context.Context, choose.Setting) (*sparse.CSR, error) { return g, nil }
+	source := func(ctx context.Context, st choose.Setting) (*sparse.CSR, error) {
+		if st.Kernel == graph.Gaussian {
+			return g, nil
+		}
+		return s.network(ctx, st.Neighbors, st.Bandwidth, l, st.Kernel)
+	}
 	o := choose.Options{Workers: 1, Scores: true}
 	auto, err := choose.Auto(ctx, source, l, choose.Asked{}, o)
 	if err != nil {
 		return d, err
 	}
 	var all choose.Score
+	own := len(auto.Scores)
+	d.fixed, d.mass, d.none = make([]float64, own), make([]float64, own), make([]float64, own)
 	for _, sc := range auto.Scores {
-		d.fixed = append(d.fixed, s.accuracy(sc.Fields, sc.Weights, l))
+		at := slices.Index(classPs, sc.P)
+		d.fixed[at] = s.accuracy(sc.Fields, sc.Weights, l)
 		mass, err := choose.Balance{Mode: choose.Uniform}.Mass(sc.Fields, l)
 		if err != nil {
 			return d, err
 		}
-		d.mass = append(d.mass, s.accuracy(sc.Fields, mass, l))
+		d.mass[at] = s.accuracy(sc.Fields, mass, l)
 		even := make(choose.Weights, len(l.Target))
 		for c := range even {
 			even[c] = 1
 		}
-		d.none = append(d.none, s.accuracy(sc.Fields, even, l))
+		d.none[at] = s.accuracy(sc.Fields, even, l)
 		if !sc.Certified {
 			d.missed++
 		}
 		all.Count.LinearSolves += sc.Count.LinearSolves
 	}
-	d.rule, d.ruleP = s.accuracy(auto.Chosen.Fields, auto.Chosen.Weights, l), auto.P
+	d.rule, d.moved = s.accuracy(auto.Chosen.Fields, auto.Chosen.Weights, l), auto.Chosen != auto.Scores[0]
 	d.cost = float64(all.Count.LinearSolves) / float64(max(solvesOf(auto.Chosen), 1))
 	var rest []choose.Setting
 	for _, p := range classPs[len(d.fixed):] {
-		rest = append(rest, choose.Setting{P: p, Neighbors: choose.DefaultNeighbors, Bandwidth: local})
+		rest = append(rest, choose.Setting{P: p, Neighbors: choose.DefaultNeighbors, Bandwidth: local, Balance: auto.Balance})
 	}
 	more, err := choose.Sweep(ctx, source, l, rest, choose.Options{Workers: 1})
 	if err != nil {
@@ -207,7 +216,7 @@ func (st *classStudy) write(w io.Writer) {
 			each(func(d classDraw) float64 { return d.none[1] }), each(func(d classDraw) float64 { return d.mass[1] }),
 			st.over(rate, func(r *classRow) float64 { b, _ := r.best(); return b - r.mean(ruleOf) }),
 			each(func(d classDraw) float64 {
-				if d.ruleP != choose.DefaultClassP {
+				if d.moved {
 					return 1
 				}
 				return 0

@@ -8,6 +8,7 @@ import (
 	"os"
 
 	"pinfill/internal/choose"
+	"pinfill/internal/graph"
 	"pinfill/internal/parallel"
 	"pinfill/internal/solve"
 	"pinfill/internal/sparse"
@@ -69,7 +70,7 @@ func studyNumbers(ctx context.Context, tables []*table, draws int) (*numberStudy
 func (s *space) numberDraw(ctx context.Context, count int, draw uint64) (numberDraw, error) {
 	var d numberDraw
 	l := s.atRandom(count, draw)
-	g, err := s.network(ctx, choose.DefaultNeighbors, plain, l)
+	g, err := s.network(ctx, choose.DefaultNeighbors, plain, l, graph.Gaussian)
 	if err != nil {
 		return d, err
 	}

@@ -45,12 +45,12 @@ func newSpace(ctx context.Context, t *table) (*space, error) {
 }
 
 // network gives the weighted graph of a setting, components without a label joined to the nearest with one.
-func (s *space) network(ctx context.Context, k int, b graph.Bandwidth, l choose.Labels) (*sparse.CSR, error) {
+func (s *space) network(ctx context.Context, k int, b graph.Bandwidth, l choose.Labels, kernel graph.Kernel) (*sparse.CSR, error) {
 	g, err := graph.FromLists(s.lists, min(k, s.lists.K), 0)
 	if err != nil {
 		return nil, err
 	}
-	w, err := g.LogWeights(graph.Gaussian, b, 0)
+	w, err := g.LogWeights(kernel, b, 0)
 	if err != nil {
 		return nil, err
 	}
@@ -58,7 +58,7 @@ func (s *space) network(ctx context.Context, k int, b graph.Bandwidth, l choose.
 	if err != nil || len(reach.Unlabelled()) == 0 {
 		return w, err
 	}
-	joined, _, err := g.Join(ctx, w, reach, s.points, graph.Gaussian, b, neighbors.Options{})
+	joined, _, err := g.Join(ctx, w, reach, s.points, kernel, b, neighbors.Options{})
 	return joined, err
 }
 
