@@ -37,3 +37,6 @@ check:
 
 docs:
 	$(GO) run ./internal/cli/gen docs
+
+bench:
+	$(GO) test -run '^$$' -bench . -benchtime 1x ./...
