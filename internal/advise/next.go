@@ -82,7 +82,7 @@ const (
 // needs all columns of G and did worse here. Divided by cost where costs are given.
 //
 // r'G is exact, from one solve, and so is every down-date, from one solve a pick. G_kk is exact for the vertices
-// compared last: it is estimated for all (32 random probes, or exactly where the graph is small) and solved for those
+// compared last: it is estimated for all (16 random probes, or exactly where the graph is small) and solved for those
 // that lead until an exact one leads.
 func Next(ctx context.Context, p NextProblem) ([]Pick, error) {
 	if err := p.validate(); err != nil {

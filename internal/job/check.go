@@ -234,7 +234,7 @@ func (c *Checked) Text() string {
 	g := c.Graph
 	fmt.Fprintf(&b, "graph      %d vertices, %d edges, degree %d to %d (median %d, effectively %.1f), weights exp(%.3g) to exp(%.3g)\n",
 		g.Vertices, g.Edges, g.MinDegree, g.MaxDegree, g.MedianDegree, float64(c.Effective), float64(g.LogWeightLow), float64(g.LogWeightHigh))
-	fmt.Fprintf(&b, "reach      %d components, %d without a label (%d rows); %d isolated rows, %d hubs", g.Components, g.UnlabelledParts, g.UnlabelledRows, c.Isolated, c.Hubs)
+	fmt.Fprintf(&b, "reach      %s, %d without a label (%s); %s, %s", plural(g.Components, "component"), g.UnlabelledParts, plural(g.UnlabelledRows, "row"), plural(c.Isolated, "isolated row"), plural(c.Hubs, "hub"))
 	if c.ReachK > 0 {
 		fmt.Fprintf(&b, "; %d neighbours would reach every row", c.ReachK)
 	}

@@ -100,16 +100,27 @@ func (r *run) summary(l *labelled) {
 	if rec.Trust != nil {
 		r.note("trust: %s", rec.Trust.sentence())
 	}
-	r.note("certified: values within %.1g of the label range of the minimiser in every solve (%d solves)", rec.worstWidth(), len(rec.Solves))
+	r.note("certified: values within %.1g of the label range of the minimiser in every solve (%s)", rec.worstWidth(), plural(len(rec.Solves), "solve"))
 	var files []string
 	for _, o := range rec.Outputs {
 		if o.Name != "-" {
 			files = append(files, o.Name)
 		}
 	}
+	if r.Record != "" {
+		files = append(files, r.Record)
+	}
 	if len(files) > 0 {
 		r.note("written: %s", strings.Join(files, ", "))
 	}
+}
+
+// plural writes a number of things.
+func plural(n int, thing string) string {
+	if n == 1 {
+		return "1 " + thing
+	}
+	return fmt.Sprintf("%d %ss", n, thing)
 }
 
 func labelText(t TableFigures) string {
