@@ -36,7 +36,7 @@ const (
 
 var reasonWords = [...]string{
 	Unreached: "no label in its part of the data",
-	Boundary:  "the leading classes nearly tie here",
+	Boundary:  "the labels around it disagree",
 	Remote:    "far from every label",
 	Central:   "in the middle of rows that follow it",
 }
