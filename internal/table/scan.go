@@ -123,10 +123,16 @@ func (w *walker) quoted() {
 	w.blank = -1
 	data := w.p.data
 	for pos := 0; pos < len(data); {
-		before := w.s.refused
+		before, blank := w.s.refused, w.blank
+		if w.blank >= 0 {
+			line, _, _ := bytes.Cut(data[pos:], []byte("\n"))
+			if len(trimEnd(line)) > 0 {
+				w.refuseBlank() // before what the row itself is refused for
+			}
+		}
 		next, cells := w.quotedRow(pos)
 		if next > w.stop {
-			w.s.refused = before
+			w.s.refused, w.blank = before, blank
 			break
 		}
 		row := trimEnd(data[pos:next])
@@ -193,18 +199,24 @@ func (w *walker) row(pos, next int, row []byte) bool {
 		}
 		return false
 	}
-	if w.blank >= 0 {
-		if !skip(&w.s.refused) {
-			w.s.refused.Add(w.h.blankLine(w.p, w.blank))
-		}
-		w.blank = -1
-	}
+	w.refuseBlank()
 	w.s.starts = append(w.s.starts, uint32(pos))
 	w.end = next
 	if len(row) > w.h.maxField {
 		w.longCell(pos, row)
 	}
 	return true
+}
+
+// refuseBlank refuses the blank lines before a row, if there are any.
+func (w *walker) refuseBlank() {
+	if w.blank < 0 {
+		return
+	}
+	if !skip(&w.s.refused) {
+		w.s.refused.Add(w.h.blankLine(w.p, w.blank))
+	}
+	w.blank = -1
 }
 
 func (w *walker) finish() {
