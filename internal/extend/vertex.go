@@ -168,17 +168,23 @@ func (s *star) pull(u float64) (below, above side, near float64, ok bool) {
 	return side{math.Log(sb) / s.r, db / sb}, side{math.Log(sa) / s.r, da / sa}, near, true
 }
 
-// power is d^r for d in (0, 1].
+// power is d^r for d in (0, 1]; whole r up to 31 (p = 3, 4, 6, 8, 16, ...) by squaring, at a tenth of the cost.
 func power(d, r float64) float64 {
-	switch r {
-	case 0.5:
+	if r == 0.5 {
 		return math.Sqrt(d)
-	case 2:
-		return d * d
-	case 3:
-		return d * d * d
 	}
-	return math.Exp(r * math.Log(d))
+	n := uint(r)
+	if float64(n) != r || n > 31 {
+		return math.Exp(r * math.Log(d))
+	}
+	x := 1.0
+	for ; n > 0; n >>= 1 {
+		if n&1 == 1 {
+			x *= d
+		}
+		d *= d
+	}
+	return x
 }
 
 // pullLog is pull for one side in logarithms, for powers and weights beyond the range of float64.
