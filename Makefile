@@ -33,10 +33,43 @@ check:
 	$(GO) vet ./...
 	@out=$$($(GO) run $(FUMPT) -l cmd internal); if [ -n "$$out" ]; then echo "not formatted:"; echo "$$out"; exit 1; fi
 	$(GO) run $(LINT) run ./...
+	$(GO) test ./cmd/pinfill -run TestNoFusedProducts
 	$(GO) mod tidy -diff
 
+# Every benchmark prints ratios to a yardstick taken in the same run; those that need SciPy are skipped without it.
+BENCHTIME ?= 1x
+bench:
+	$(GO) test -run '^$$' -bench . -benchtime $(BENCHTIME) -timeout 2h ./...
+
+# Random graphs against the slow oracles, at every p.
+PROOFS ?= 10000
+proof:
+	$(GO) test ./internal/lexmin -run Proof -v -timeout 24h -proof $(PROOFS)
+	$(GO) test ./internal/solve -run Proof -v -timeout 24h -proof $(PROOFS)
+
+# Each target for FUZZTIME, one after the other; the corpus under testdata/fuzz is replayed by every go test.
+FUZZTIME ?= 6m
+FUZZ = $(GO) test -run '^$$' -fuzztime $(FUZZTIME) -fuzzminimizetime 1x
+fuzz:
+	$(FUZZ) -fuzz '^FuzzRun$$' ./internal/solve
+	$(FUZZ) -fuzz '^FuzzRead$$' ./internal/table
+	$(FUZZ) -fuzz '^FuzzNumber$$' ./internal/table
+	$(FUZZ) -fuzz '^FuzzJoin$$' ./internal/encode
+	$(FUZZ) -fuzz '^FuzzLabel$$' ./internal/cli
+	$(FUZZ) -fuzz '^FuzzArguments$$' ./internal/cli
+
+# How p, bandwidth and neighbours are chosen, on open and generated tables; rewrites docs/choosing-p.md.
+study:
+	$(GO) run ./internal/choose/study -docs docs
+
+# What confidence, coverage, audit and next are worth where the truth is known.
+DRAWS ?= 200
+coverage:
+	$(GO) test ./internal/advise/study -v -timeout 24h -draws $(DRAWS)
+
+# Man pages, completions and the list of options, from the commands themselves.
 docs:
 	$(GO) run ./internal/cli/gen docs
 
-bench:
-	$(GO) test -run '^$$' -bench . -benchtime 1x ./...
+clean:
+	rm -rf bin demo coverage.out

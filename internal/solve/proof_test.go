@@ -11,7 +11,7 @@ import (
 	"pinfill/internal/testproblems"
 )
 
-var proofCount = flag.Int("proof", 0, "random graphs for each p in TestProof; 0 means 300, or 60 with -short")
+var proofCount = flag.Int("proof", 0, "random graphs for each p in TestProof; 0 means 60, or 24 with -short")
 
 // problemOf turns a test problem into one of this package's.
 func problemOf(t testproblems.Problem) Problem {
@@ -43,9 +43,9 @@ func oracle(t testproblems.Problem) (f []float64, uncertain float64) {
 func TestProof(t *testing.T) {
 	count := *proofCount
 	if count == 0 {
-		count = 300
+		count = 60
 		if testing.Short() {
-			count = 60
+			count = 24
 		}
 	}
 	for _, p := range []float64{1.5, 2, 2.5, 3, 4, 8, 32, math.Inf(1)} {
