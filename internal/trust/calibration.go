@@ -13,9 +13,9 @@ import (
 // since the level also depends on how many labels there are. Then p_c = exp(beta q_c) / sum_k exp(beta q_k).
 //
 // A few dozen labels do not settle one number beta, and the best fit is overconfident, without bound where every label
-// is answered rightly. So beta is not fitted but averaged: prior ln beta ~ N(ln(4/m), 0.7^2), m the mean advantage of
+// is answered rightly. So beta is not fitted but averaged: prior ln beta ~ N(ln(5/m), 0.5^2), m the mean advantage of
 // the leading class over the mean class in q; likelihood the left-out probability of the given labels. The prior's
-// centre says that a typical lead is worth e^4 to one; its width leaves a factor of four either way. Temperature
+// centre says that a typical lead is worth e^5 to one; its width leaves a factor of e either way. Temperature
 // scaling: Guo et al. (2017), equation 9; averaging instead of fitting is ours.
 type Calibration struct {
 	classes int
@@ -28,8 +28,8 @@ type node struct{ beta, weight float64 }
 
 const (
 	levelFloor  = 0.02 // keeps q finite for a row without any score
-	priorLead   = 4.0  // prior logit of a typical leading class
-	priorSpread = 0.7  // standard deviation of ln beta
+	priorLead   = 5.0  // prior logit of a typical leading class
+	priorSpread = 0.5  // standard deviation of ln beta
 	gridStep    = 0.15 // of ln beta
 	gridHalf    = 24   // points on each side of the centre: a factor of e^3.6 both ways
 	nodeCount   = 6    // nodes that replace the grid when rows are scored

@@ -19,7 +19,11 @@ func TestAudit(t *testing.T) {
 	}
 	const count, flipped = 100, 10
 	fmt.Printf("%-8s %6s %8s %9s %10s\n", "table", "AUC", "first 6", "first 10", "named<.05")
-	for _, name := range []string{"digits", "clips", "seabed"} {
+	names := []string{"digits", "clips", "seabed"}
+	if quick() {
+		names = names[:1]
+	}
+	for _, name := range names {
 		l := get(t, name)
 		var area, six, ten, named mean
 		for d := range fewer(name, 2) {
@@ -78,7 +82,7 @@ func TestAudit(t *testing.T) {
 			named.add(sure / flipped)
 		}
 		fmt.Printf("%-8s %6.4f %8.3f %9.3f %10.3f\n", name, area.value(), six.value(), ten.value(), named.value())
-		if area.value() < .97 || six.value() < .5 {
+		if area.value() < .97-3*area.se() || six.value() < .5-3*six.se() {
 			t.Errorf("%s: AUC %.3f and %.2f in the first 6, want .97 and half", name, area.value(), six.value())
 		}
 	}

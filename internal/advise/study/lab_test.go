@@ -1,6 +1,7 @@
 // Package study measures what trust and advise promise, on whole tables whose every label is known: coverage, set sizes,
 // calibration, audits and what naming rows gains. Its tests print the figures of docs/trust.md and fail outside the
-// bounds given there; -draws says over how many drawings of labels (few by default, 200 for the documented figures).
+// bounds given there. -draws says over how many drawings of labels: by default a few and the small tables alone, 200 for
+// the documented figures.
 package study
 
 import (
@@ -26,7 +27,10 @@ import (
 	"pinfill/internal/sparse"
 )
 
-var drawings = flag.Int("draws", 8, "drawings of labels that figures are averaged over")
+var drawings = flag.Int("draws", 3, "drawings of labels that figures are averaged over")
+
+// quick says that this is a run among other tests: a few drawings, the small tables alone.
+func quick() bool { return *drawings < 8 }
 
 // lab is a table with its graph.
 type lab struct {

@@ -53,17 +53,17 @@ func TestNext(t *testing.T) {
 	if testing.Short() {
 		t.Skip("a study")
 	}
-	batches := []int{13, 5}
-	if *drawings >= 50 {
-		batches = append(batches, 26)
+	batches, names := []int{13, 5, 26}, []string{"digits", "clips", "seabed"}
+	if quick() {
+		batches, names = batches[:1], names[:1]
 	}
-	fmt.Printf("%-8s %5s %9s | %s\n", "table", "batch", "random 60", "accuracy at 23, 36, 49 labels")
-	for _, name := range []string{"digits", "clips", "seabed"} {
+	fmt.Printf("%-8s %5s %9s | %s\n", "table", "batch", "random 60", "accuracy by number of labels")
+	for _, name := range names {
 		l := get(t, name)
 		for _, batch := range batches {
 			var random mean
 			at := map[int]*mean{}
-			draws := max(fewer(name, 2)/2, 3)
+			draws := min(max(fewer(name, 2)/2, 2), 20)
 			for d := range draws {
 				r := rand.New(rand.NewPCG(uint64(d), 99))
 				all := r.Perm(l.n)
