@@ -19,6 +19,8 @@ type Options struct {
 	Progress  func(share float64)
 	// Scores asks for left-out scores even where there is nothing to choose.
 	Scores bool
+	// All makes Auto solve every candidate even where labels are too few to compare them.
+	All bool
 	// Want marks the settings that Sweep scores; others are solved only where a wanted one starts from them, so that
 	// the scores of parts of a sweep are those of the whole. nil means all.
 	Want []bool
@@ -72,7 +74,7 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 		fold = FoldsOf(l, foldCount, o.Seed)
 	}
 	fixed := len(all) == 1
-	if fold == nil && !o.Scores {
+	if fold == nil && !o.All {
 		if len(a.P) == 0 && len(all) == len(classPs) {
 			all = all[:2] // the default, and p = 2 to fall back on
 		}
@@ -83,7 +85,7 @@ func Auto(ctx context.Context, source Source, l Labels, a Asked, o Options) (*De
 	even := false   // the rows lie without gaps
 	for i := 0; i < len(all); i++ {
 		s := all[i]
-		if t.fold == nil && !o.Scores && len(d.Scores) > 0 && d.Scores[0].Certified {
+		if t.fold == nil && !o.All && len(d.Scores) > 0 && d.Scores[0].Certified {
 			break // nothing to compare: the first that holds stands
 		}
 		if t.graph == nil || !s.sameGraph(all[i-1]) {

@@ -92,7 +92,7 @@ func (s *space) classDraw(ctx context.Context, rate int, draw uint64) (classDraw
 		}
 		return s.network(ctx, st.Neighbors, st.Bandwidth, l, st.Kernel)
 	}
-	o := choose.Options{Workers: 1, Scores: true}
+	o := choose.Options{Workers: 1, Scores: true, All: true}
 	auto, err := choose.Auto(ctx, source, l, choose.Asked{}, o)
 	if err != nil {
 		return d, err

@@ -75,7 +75,7 @@ func (s *space) numberDraw(ctx context.Context, count int, draw uint64) (numberD
 		return d, err
 	}
 	source := func(context.Context, choose.Setting) (*sparse.CSR, error) { return g, nil }
-	auto, err := choose.Auto(ctx, source, l, choose.Asked{}, choose.Options{Workers: 1, Scores: true})
+	auto, err := choose.Auto(ctx, source, l, choose.Asked{}, choose.Options{Workers: 1, Scores: true, All: true})
 	if err != nil {
 		return d, err
 	}
