@@ -40,7 +40,7 @@ func sampleRun(task Task, n, classes int, names []string) *Run {
 	a := &r.Answers
 	a.Origin = make([]Origin, n)
 	for row := range n {
-		if row%(max(n/40, 1)) == 0 {
+		if row%max(n/40, 1) == 0 {
 			a.Origin[row] = Given
 		} else if row%97 == 5 {
 			a.Origin[row] = Bridged
@@ -67,8 +67,10 @@ func sampleRun(task Task, n, classes int, names []string) *Run {
 	}
 	r.Map = m
 	nan := math.NaN()
-	r.Trust = &Trust{Promise: "coverage 0.9, if drawn at random", Note: "measured on left-out labels", Coverage: .9, Labels: 40, Accuracy: .9, LogLoss: .3, Brier: .2, ECE: .05, ECEFloor: .04, RMSE: nan, MAE: nan,
-		Bins: []Bin{{20, .7, .65}, {20, .95, 1}}}
+	r.Trust = &Trust{
+		Promise: "coverage 0.9, if drawn at random", Note: "measured on left-out labels", Coverage: .9, Labels: 40, Accuracy: .9, LogLoss: .3, Brier: .2, ECE: .05, ECEFloor: .04, RMSE: nan, MAE: nan,
+		Bins: []Bin{{20, .7, .65}, {20, .95, 1}},
+	}
 	if task == Numbers {
 		r.Trust.Bins, r.Trust.Accuracy, r.Trust.RMSE = nil, nan, .8
 		r.Trust.Given, r.Trust.LeftOut = []float64{1, 2, 3}, []float64{1.2, 1.7, nan}
