@@ -3,6 +3,7 @@ package choose
 import (
 	"context"
 	"math"
+	"slices"
 
 	"pinfill/internal/solve"
 	"pinfill/internal/sparse"
@@ -154,4 +155,27 @@ func LeftWeights(left *LeftOut, fold int, b Balance, l Labels) Weights {
 		b.Mode = FromLabels
 	}
 	return massWeights(left.Mass[fold], b.shares(l.PerClass()))
+}
+
+// LeftOutWeights are, by fold, the class weights that an answer without the fold would have had: the weights of the
+// whole answer, moved as mass normalisation moves when the fold is left out. The shares it aims at do not count the
+// labels left out; with them counted, left-out answers lean to the right class and sets of classes come out too small.
+func (s *Score) LeftOutWeights(l Labels) []Weights {
+	out := make([]Weights, s.left.Folds)
+	b := s.Balance
+	if b.Mode == AutoBalance {
+		b.Mode = FromLabels
+	}
+	whole := massWeights(masses(s.Fields, l), b.shares(l.PerClass()))
+	for f, ks := range members(s.left.Fold, s.left.Folds) {
+		out[f] = slices.Clone(s.Weights)
+		if b.Mode == NoBalance {
+			continue
+		}
+		part := massWeights(s.left.Mass[f], b.shares(l.without(ks).PerClass()))
+		for c := range out[f] {
+			out[f][c] *= part[c] / whole[c]
+		}
+	}
+	return out
 }

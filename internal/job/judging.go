@@ -78,8 +78,9 @@ func (r *run) judge(ctx context.Context, l *labelled) error {
 func evidence(s *choose.Score, l choose.Labels) trust.ClassEvidence {
 	e := trust.ClassEvidence{Classes: len(l.Target)}
 	left := s.Left()
+	weights := s.LeftOutWeights(l)
 	for k := range l.Vertex {
-		w := choose.LeftWeights(left, int(left.Fold[k]), s.Balance, l)
+		w := weights[left.Fold[k]]
 		e.LeftOut = append(e.LeftOut, weighted(make([]float64, len(w)), w, func(c int) float64 { return left.Score[k][c] }))
 		e.Given = append(e.Given, l.Class(k))
 	}
