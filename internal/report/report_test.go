@@ -221,7 +221,8 @@ func TestInertSees(t *testing.T) {
 func TestSameBytes(t *testing.T) {
 	for _, task := range []Task{Classes, Numbers} {
 		r := sampleRun(task, 2000, 5, nil)
-		if draw(t, r) != draw(t, r) {
+		first, again := draw(t, r), draw(t, r)
+		if first != again {
 			t.Errorf("%s: two drawings of one run differ", task)
 		}
 	}

@@ -154,6 +154,9 @@ func (s *Stream) afterHead(p piece, cut *cutter, o *Options) (*piece, *cutter, e
 		if err == nil {
 			p.data = append(p.data, more.data...)
 		} else if err != io.EOF {
+			if _, _, first := s.head.headEnd(p); first != nil {
+				return nil, nil, first // the header comes first in the file
+			}
 			moveDown(err, bytes.Count(p.data, []byte{'\n'}))
 			return nil, nil, err
 		}
