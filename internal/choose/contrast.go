@@ -60,7 +60,7 @@ func contrastOf(g *sparse.CSR) float64 {
 	}
 	m, v := mean(scale), 0.0
 	for _, a := range scale {
-		v += (a - m) * (a - m)
+		v += float64((a - m) * (a - m))
 	}
 	sd := math.Sqrt(v / float64(len(scale)))
 	return sd / mean(inverse) * math.Sqrt(contrastRank)

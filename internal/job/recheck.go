@@ -165,7 +165,7 @@ func (s *recheck) figure(x *extension, fresh []pick, fields [][]float64) *StrayF
 		}
 		d := math.Abs(scores[0] - p.value)
 		worst = max(worst, d)
-		square += d * d
+		square += float64(d * d)
 	}
 	if len(x.model.Classes) > 0 {
 		f.Changed = &changed
