@@ -49,8 +49,8 @@ func chance(drawings int) float64 {
 // TestClassCoverage prints, for labels drawn at random: coverage and size of the sets, calibration error, Brier score
 // and accuracy on the unlabelled rows.
 func TestClassCoverage(t *testing.T) {
-	if testing.Short() {
-		t.Skip("a study")
+	if *drawings == 0 {
+		t.Skip("a study: make coverage")
 	}
 	fmt.Printf("%-8s %3s %4s %-7s %8s %6s %6s %6s %6s %6s %6s %8s\n", "table", "l", "p", "balance", "covered", "size", "empty", "ECE", "Brier", "right", "lo-ECE", "lo-right")
 	for _, name := range tables() {
@@ -127,8 +127,8 @@ func classCoverage(t *testing.T, name string, count int, p float64, mode choose.
 // TestNumberCoverage prints coverage and width of intervals: Plus (jackknife+), At, and a split-conformal baseline that
 // trains on half of the labels.
 func TestNumberCoverage(t *testing.T) {
-	if testing.Short() {
-		t.Skip("a study")
+	if *drawings == 0 {
+		t.Skip("a study: make coverage")
 	}
 	fmt.Printf("%-12s %3s  %-14s %-14s %-14s (width in standard deviations of the label)\n", "table", "l", "plus", "at", "split")
 	names := []string{"petal width", "proline", "grain"}

@@ -27,7 +27,7 @@ import (
 	"pinfill/internal/sparse"
 )
 
-var drawings = flag.Int("draws", 3, "drawings of labels that figures are averaged over")
+var drawings = flag.Int("draws", 0, "drawings of labels that figures are averaged over; 0 skips the study")
 
 // quick says that this is a run among other tests: a few drawings, the small tables alone.
 func quick() bool { return *drawings < 8 }
