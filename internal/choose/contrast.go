@@ -2,6 +2,7 @@ package choose
 
 import (
 	"context"
+	"errors"
 	"math"
 	"slices"
 
@@ -27,6 +28,10 @@ const (
 func contrast(ctx context.Context, source Source, s Setting) (float64, error) {
 	s.Kernel, s.Bandwidth = graph.Inverse, graph.Bandwidth{H: 1}
 	g, err := source(ctx, s)
+	var under *graph.UnderflowError
+	if errors.As(err, &under) {
+		return math.NaN(), nil // distances too far from 1 to be told
+	}
 	if err != nil {
 		return math.NaN(), err
 	}

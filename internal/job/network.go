@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 
 	"pinfill/internal/choose"
 	"pinfill/internal/encode"
@@ -68,10 +69,11 @@ func (r *run) searchOptions() neighbors.Options {
 	return neighbors.Options{Search: neighbors.Search(r.Search), Metric: r.Metric, Workers: r.Workers, Seed: r.Seed, Progress: r.progressFor("neighbours")}
 }
 
-// inUnits gives a bandwidth in the units of the points.
+// inUnits gives a bandwidth in the units of the points. One beyond the range of float64 there stays at its end: it is
+// the weights that it gives which are then refused.
 func (r *run) inUnits(n *network, b graph.Bandwidth) graph.Bandwidth {
 	if !b.Local {
-		b.H /= n.space.Unit
+		b.H = min(max(b.H/n.space.Unit, 0x1p-1022), math.MaxFloat64)
 	}
 	return b
 }
@@ -128,7 +130,13 @@ func (r *run) weighted(n *network, k int, kernel graph.Kernel, b graph.Bandwidth
 	w, err := g.LogWeights(kernel, r.inUnits(n, b), r.Workers)
 	var under *graph.UnderflowError
 	if errors.As(err, &under) {
-		return nil, fault.Inputf("P07", "%v; pass --bandwidth=%.3g or local", err, under.Usable)
+		told := *under
+		if !b.Local { // in the units of --bandwidth
+			told.Bandwidth, told.Smallest, told.Usable = b, under.Smallest*n.space.Unit, under.Usable*n.space.Unit
+		}
+		refusal := fault.Inputf("P07", "%v; pass --bandwidth=%.3g or local", &told, told.Usable)
+		refusal.Err = err
+		return nil, refusal
 	}
 	return w, err
 }
