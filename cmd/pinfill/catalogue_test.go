@@ -45,6 +45,7 @@ var commands = map[string]func(ts script, neg bool, args []string){
 	"islink":       isLink,
 	"mode":         mode,
 	"fifo":         fifo,
+	"bomb":         bomb,
 }
 
 // must stops a test or a script at an error.
@@ -121,6 +122,23 @@ func gzipFile(ts script, _ bool, args []string) {
 	must(ts, err)
 	must(ts, z.Close())
 	must(ts, os.WriteFile(ts.MkAbs(args[1]), b.Bytes(), 0o666))
+}
+
+// bomb writes a small gzip file that unpacks to as many megabytes as asked.
+func bomb(ts script, _ bool, args []string) {
+	mb, err := strconv.Atoi(args[1])
+	must(ts, err)
+	var b bytes.Buffer
+	z := gzip.NewWriter(&b)
+	_, err = z.Write([]byte("id,x,y,kind\n"))
+	must(ts, err)
+	line := bytes.Repeat([]byte("a,1,2,mud\n"), 1<<20/10)
+	for range mb {
+		_, err = z.Write(line)
+		must(ts, err)
+	}
+	must(ts, z.Close())
+	must(ts, os.WriteFile(ts.MkAbs(args[0]), b.Bytes(), 0o666))
 }
 
 // manyClasses writes a table in which every row has a class of its own.

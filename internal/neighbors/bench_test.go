@@ -131,15 +131,17 @@ func timeBlocks(t *tree, workers int) (brute, pruned float64) {
 	return took / pairs * n * n, took / queries * n
 }
 
-// BenchmarkHostile sets the time from raw rows to neighbours, for point sets that hurt k-d trees, against uniform
-// points of the same size.
-func BenchmarkHostile(b *testing.B) {
-	const n, d = 200_000, 3
+// named is a set of points with a name.
+type named struct {
+	name string
+	m    *points.Matrix
+}
+
+// hostile gives sets of n points that trees are known to dislike, uniform points first.
+func hostile(n int) []named {
+	const d = 3
 	r := rand.New(rand.NewPCG(9, 9))
-	sets := []struct {
-		name string
-		m    *points.Matrix
-	}{
+	return []named{
 		{"uniform", fill(n, d, func(int, int) float64 { return r.Float64() })},
 		{"full grid", fill(n, d, func(i, j int) float64 { return float64([]int{i % 59, i / 59 % 59, i / 59 / 59}[j]) })},
 		{"coarse grid", fill(n, d, func(int, int) float64 { return float64(r.IntN(10)) })},
@@ -148,12 +150,18 @@ func BenchmarkHostile(b *testing.B) {
 		{"axes", fill(n, d, func(i, j int) float64 { return float64((i%3-j+3)%3/2) * r.NormFloat64() })},
 		{"powers", fill(n, d, func(int, int) float64 { return math.Exp2(60 * r.Float64()) })},
 		{"shell", fill(n, d, func(i, j int) float64 {
-			z, a := float64(i)/n*2-1, float64(i)*2.399963 // golden angle
+			z, a := float64(i)/float64(n)*2-1, float64(i)*2.399963 // golden angle
 			return []float64{math.Sqrt(1-z*z) * math.Cos(a), math.Sqrt(1-z*z) * math.Sin(a), z}[j]
 		})},
 		{"sorted line", fill(n, d, func(i, j int) float64 { return float64(i * (j + 1)) })},
 		{"nested clusters", fill(n, d, func(i, _ int) float64 { return math.Ldexp(r.NormFloat64(), -(i % 40)) })},
 	}
+}
+
+// BenchmarkHostile sets the time from raw rows to neighbours, for point sets that hurt k-d trees, against uniform
+// points of the same size.
+func BenchmarkHostile(b *testing.B) {
+	sets := hostile(200_000)
 	for b.Loop() {
 		var base float64
 		for _, set := range sets {

@@ -263,3 +263,26 @@ func TestRefusals(t *testing.T) {
 }
 
 func second[T any](_ T, _ Report, err error) error { return err }
+
+// TestHostile counts distances instead of seconds: on sets that trees dislike, a point costs at most four times what
+// it costs among uniform points.
+func TestHostile(t *testing.T) {
+	var base float64
+	for _, set := range hostile(20_000) {
+		s, err := points.Prepare(context.Background(), set.m, points.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		_, rep, err := KNearest(context.Background(), s.Points, 10, Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		each := float64(rep.Distances) / float64(set.m.N) // by row: copies of a row are merged before the search
+		if base == 0 {
+			base = each
+		}
+		if each > 4*base {
+			t.Errorf("%s: %.0f distances a row, uniform points %.0f", set.name, each, base)
+		}
+	}
+}
