@@ -113,6 +113,7 @@ func (r *run) chooseSetting(ctx context.Context, l *labelled) error {
 		}
 	}
 	l.setting, l.chosen, l.field, l.bridged = d.Setting, d.Chosen, out.field, out.bridged
+	out.figures.measure(out.weights, r.Workers)
 	l.record.Graph = out.figures
 	r.warn(out.warnings...)
 	for _, text := range d.Warnings {

@@ -117,6 +117,7 @@ func (r *run) sweep(ctx context.Context, l *labelled, sweep *compared, c *Compar
 		}
 		if l.field == nil {
 			r.warn(out.warnings...)
+			out.figures.measure(out.weights, r.Workers)
 			l.record.Graph = out.figures
 			l.field = out.field
 		}

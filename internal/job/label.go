@@ -10,6 +10,7 @@ import (
 	"pinfill/internal/encode"
 	"pinfill/internal/graph"
 	"pinfill/internal/solve"
+	"pinfill/internal/sparse"
 )
 
 // labelled is a run of label before anything is written.
@@ -83,7 +84,7 @@ func (r *run) layField(ctx context.Context, l *labelled, s choose.Setting) (*lai
 	if w, out.bridged, err = r.reach(ctx, n, w, s, out); err != nil {
 		return nil, err
 	}
-	out.figures.measure(w, r.Workers)
+	out.weights = w
 	f := &field{graph: w, labels: r.labelsOf(l.data, n.vertices), n: n.n}
 	if r.Tether > 0 {
 		if f.graph, f.labels, err = r.tethered(l.data, n.vertices, w); err != nil {
@@ -98,6 +99,7 @@ func (r *run) layField(ctx context.Context, l *labelled, s choose.Setting) (*lai
 type laid struct {
 	setting  choose.Setting
 	field    *field
+	weights  *sparse.CSR // before tethers
 	bridged  []bool // by vertex, nil when none is
 	figures  GraphFigures
 	warnings []encode.Warning
