@@ -100,7 +100,7 @@ type laid struct {
 	setting  choose.Setting
 	field    *field
 	weights  *sparse.CSR // before tethers
-	bridged  []bool // by vertex, nil when none is
+	bridged  []bool      // by vertex, nil when none is
 	figures  GraphFigures
 	warnings []encode.Warning
 }
