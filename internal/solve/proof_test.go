@@ -11,7 +11,7 @@ import (
 	"pinfill/internal/testproblems"
 )
 
-var proofCount = flag.Int("proof", 0, "random graphs for each p in TestProof; 0 means 60, or 24 with -short")
+var proofCount = flag.Int("proof", 0, "random graphs for each p in TestProof; 0 means 300, or 24 with -short")
 
 // problemOf turns a test problem into one of this package's.
 func problemOf(t testproblems.Problem) Problem {
@@ -43,7 +43,7 @@ func oracle(t testproblems.Problem) (f []float64, uncertain float64) {
 func TestProof(t *testing.T) {
 	count := *proofCount
 	if count == 0 {
-		count = 60
+		count = 300
 		if testing.Short() {
 			count = 24
 		}
