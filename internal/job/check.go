@@ -163,7 +163,7 @@ func (c *Checked) lookAtDimension(r *run, l *labelled) error {
 func (r *run) dimensionFigures(l *labelled, ps []float64, bandwidths bool) (*DimensionFigures, []WindowFigures, error) {
 	n := l.network
 	dim, err := dimension.Estimate(n.lists, dimension.Options{Columns: n.space.Points.D, Workers: r.Workers})
-	if err != nil {
+	if err != nil || math.IsNaN(dim.Value) {
 		return nil, nil, nil // too few rows to say
 	}
 	d := &DimensionFigures{
@@ -257,6 +257,9 @@ func (c *Checked) Text() string {
 func (c *Checked) dimensionText(b *strings.Builder) {
 	d := c.Dimension
 	if d == nil {
+		if len(c.Shares) > 0 {
+			b.WriteString("dimension  too few rows to say, so no window either\n")
+		}
 		return
 	}
 	fmt.Fprintf(b, "dimension  %.1f (between %.1f and %.1f): likelihood", float64(d.Value), float64(d.Low), float64(d.High))
