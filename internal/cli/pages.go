@@ -8,6 +8,8 @@ import (
 
 	"github.com/spf13/cobra"
 	"github.com/spf13/pflag"
+
+	"pinfill/internal/job"
 )
 
 // Page is a file for the manual or for a shell, written from the commands and their flags.
@@ -48,7 +50,7 @@ func pageName(c *cobra.Command) string { return strings.ReplaceAll(c.CommandPath
 func (a *app) manPage(c *cobra.Command) []byte {
 	var b bytes.Buffer
 	name := pageName(c)
-	fmt.Fprintf(&b, ".TH %s 1 \"\" \"pinfill %s\" \"pinfill manual\"\n.nh\n.ad l\n", strings.ToUpper(roff(name)), Version)
+	fmt.Fprintf(&b, ".TH %s 1 \"\" \"pinfill %s\" \"pinfill manual\"\n.nh\n.ad l\n", strings.ToUpper(roff(name)), job.Version)
 	fmt.Fprintf(&b, ".SH NAME\n%s \\- %s\n", roff(name), roff(c.Short))
 	fmt.Fprintf(&b, ".SH SYNOPSIS\n.B %s\n", roff(c.UseLine()))
 	long := c.Long

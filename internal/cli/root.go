@@ -9,6 +9,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"pinfill/internal/fault"
+	"pinfill/internal/job"
 )
 
 // app is one run of the command line: its streams, its root command and the flags of every command.
@@ -84,9 +85,6 @@ func exactArgs(names ...string) cobra.PositionalArgs {
 	}
 }
 
-// Version of the program; it stands in records and model files.
-const Version = "0.1.0"
-
 func (a *app) versionCommand() *cobra.Command {
 	return &cobra.Command{
 		Use:     "version",
@@ -95,7 +93,7 @@ func (a *app) versionCommand() *cobra.Command {
 		Args:    exactArgs(),
 		RunE: func(*cobra.Command, []string) error {
 			var b strings.Builder
-			fmt.Fprintf(&b, "pinfill %s\n", Version)
+			fmt.Fprintf(&b, "pinfill %s\n", job.Version)
 			if info, ok := debug.ReadBuildInfo(); ok {
 				fmt.Fprintf(&b, "%s\n", info.GoVersion)
 				for _, m := range info.Deps {

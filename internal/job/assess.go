@@ -1,9 +1,7 @@
 package job
 
 import (
-	"bytes"
 	"context"
-	"encoding/json"
 	"fmt"
 	"math"
 	"slices"
@@ -102,14 +100,11 @@ func Assess(ctx context.Context, a *AssessOptions) (string, error) {
 	}
 	text := out.text()
 	if a.JSON {
-		var b bytes.Buffer
-		e := json.NewEncoder(&b)
-		e.SetEscapeHTML(false)
-		e.SetIndent("", "  ")
-		if err := e.Encode(out); err != nil {
+		b, err := encodeJSON(out)
+		if err != nil {
 			return "", err
 		}
-		text = b.String()
+		text = string(b)
 	}
 	if o := w.byRole["table"]; o != nil {
 		if _, err := o.Write([]byte(text)); err != nil {

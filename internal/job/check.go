@@ -1,9 +1,7 @@
 package job
 
 import (
-	"bytes"
 	"context"
-	"encoding/json"
 	"fmt"
 	"math"
 	"strings"
@@ -205,12 +203,8 @@ func sortShares(s []ColumnShare) {
 
 // JSON writes the report for scripts.
 func (c *Checked) JSON() (string, error) {
-	var b bytes.Buffer
-	e := json.NewEncoder(&b)
-	e.SetEscapeHTML(false)
-	e.SetIndent("", "  ")
-	err := e.Encode(c)
-	return b.String(), err
+	b, err := encodeJSON(c)
+	return string(b), err
 }
 
 // Text writes the report for a person, on one screen.

@@ -9,16 +9,13 @@ import (
 	"pinfill/internal/sparse"
 )
 
-// version of the program, set by the command line.
-var version = "unversioned"
-
-// SetVersion names the program's version in records and model files.
-func SetVersion(v string) { version = v }
+// Version of the program; it stands in records and model files.
+const Version = "0.1.0"
 
 // newRecord starts the record of a command.
 func (r *run) newRecord(command string, d *data) *Record {
 	return &Record{
-		Program: "pinfill", Version: version, Modules: modules(), Format: recordFormat, Command: command, Flags: r.Flags,
+		Program: "pinfill", Version: Version, Modules: modules(), Format: recordFormat, Command: command, Flags: r.Flags,
 		Table: TableFigures{Rows: d.table.Rows(), Columns: d.table.Columns()}, Caution: Caution,
 	}
 }

@@ -209,12 +209,9 @@ func bandwidthText(b graph.Bandwidth) string {
 	return text
 }
 
-// defaultTolerance is the solver's: the largest certified distance from the minimiser, as a share of the label range.
-const defaultTolerance = 1e-9
-
 func tolerance(asked float64) float64 {
 	if asked == 0 {
-		return defaultTolerance
+		return solve.DefaultTolerance
 	}
 	return asked
 }

@@ -28,7 +28,7 @@ func (r *run) newModel(l *labelled) (*extend.Model, error) {
 		return nil, err
 	}
 	m := &extend.Model{
-		Version: version, Label: r.Label, Features: l.data.features.Names, Missing: string(r.Missing), Median: l.data.features.Median,
+		Version: Version, Label: r.Label, Features: l.data.features.Names, Missing: string(r.Missing), Median: l.data.features.Median,
 		Scaling: n.space.Scaling, Metric: n.space.Metric, Kernel: l.setting.Kernel.String(), Width: r.inUnits(n, l.setting.Bandwidth), Rank: g.Rank,
 		P: l.setting.P, Energy: energyText(r.Energy), Settings: settings,
 		Points: n.space.Points, Local: g.Local, Scores: l.field.scores,

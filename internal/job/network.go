@@ -25,9 +25,6 @@ type network struct {
 	built  map[int]*graph.Graph // by number of neighbours; 0 for a radius
 }
 
-// defaultNeighbors are the neighbour counts that the choice looks at when none is given.
-var defaultNeighbors = []int{10}
-
 // findNetwork builds the vertices and the neighbour lists, or reads the given edges, and puts the labels on.
 func (r *run) findNetwork(ctx context.Context, d *data) (*network, error) {
 	if r.Edges != "" {
@@ -89,9 +86,7 @@ func (r *run) largestK(n int) (int, error) {
 		k = max(k, want)
 	}
 	if len(r.Neighbors) == 0 {
-		for _, want := range defaultNeighbors {
-			k = max(k, want)
-		}
+		k = max(k, choose.DefaultNeighbors)
 		if k >= n {
 			r.warnf("G06", "%d distinct rows give at most %d neighbours each", n, n-1)
 		}

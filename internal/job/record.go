@@ -175,12 +175,15 @@ type ResultFigures struct {
 }
 
 // encodeRecord writes the record as indented JSON with a final newline.
-func encodeRecord(rec *Record) ([]byte, error) {
+func encodeRecord(rec *Record) ([]byte, error) { return encodeJSON(rec) }
+
+// encodeJSON writes v as every JSON output is written: indented, with names as they are, and a final newline.
+func encodeJSON(v any) ([]byte, error) {
 	var b bytes.Buffer
 	e := json.NewEncoder(&b)
 	e.SetEscapeHTML(false)
 	e.SetIndent("", "  ")
-	err := e.Encode(rec)
+	err := e.Encode(v)
 	return b.Bytes(), err
 }
 

@@ -48,7 +48,7 @@ func Repeat(ctx context.Context, o *Options, rec *Record, path string) error {
 	}
 	if want := rec.Outputs[i].SHA256; sum != want {
 		what := "the program is the same version"
-		if rec.Version != version || !slices.Equal(rec.Modules, modules()) {
+		if rec.Version != Version || !slices.Equal(rec.Modules, modules()) {
 			what = "it was written by version " + rec.Version + " with other modules"
 		}
 		return &fault.Error{Exit: fault.Uncertified, File: path, Message: fmt.Sprintf("the repeated table has other bytes (%s..., recorded %s...); %s", sum[:12], want[:12], what)}

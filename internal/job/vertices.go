@@ -107,7 +107,7 @@ func (r *run) pointWarnings(d *data, s *points.Space) {
 	}
 }
 
-// vertexLess orders the ids of a given graph, so that vertices do not depend on row order.
+// namedVertices orders the ids of a given graph as text, so that vertices do not depend on row order.
 func (r *run) namedVertices(d *data) (*vertices, error) {
 	t := d.table
 	if _, err := encode.RowsByID(t, d.id, "L12"); err != nil {
